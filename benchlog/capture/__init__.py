@@ -1,0 +1,1 @@
+"""CSV text made elsewhere becomes a curve."""

@@ -1,0 +1,1 @@
+"""What a design should do: stages, amplifiers, chains and their response."""

@@ -1,0 +1,1 @@
+"""Figures out of a curve, each with its uncertainty."""

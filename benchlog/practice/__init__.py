@@ -1,0 +1,1 @@
+"""The practice bench: SCPI instruments around a modelled board."""

@@ -1,0 +1,1 @@
+"""Tables and records for people, JSON for scripts."""

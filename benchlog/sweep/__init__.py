@@ -1,0 +1,1 @@
+"""What to measure next: the schedule and the stepper; no clock, no wire."""
