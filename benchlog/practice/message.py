@@ -21,7 +21,7 @@ _HEADER = re.compile(
 )
 _NUMBER = re.compile(
     r"(?P<mantissa>[+-]?(?:\d+\.?\d*|\.\d+))(?:\s*[Ee]\s*(?P<exponent>[+-]?\d+))?"
-    r"\s*(?P<suffix>[A-Za-z/][A-Za-z0-9/.\-^]*)?"
+    r"(?:\s*(?P<suffix>[A-Za-z/][A-Za-z0-9/.\-^]*))?"
 )
 _WORD = re.compile(r"[A-Za-z]\w*")
 _STRING = re.compile(r"\"((?:[^\"]|\"\")*)\"|'((?:[^']|'')*)'")

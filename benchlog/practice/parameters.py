@@ -1,5 +1,6 @@
 """What the data elements of a command may be, and numbers as instruments answer them."""
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import TypeAlias
@@ -64,7 +65,7 @@ class Number:
             raise ScpiError(_NOT_ALLOWED[element.kind])
         factor, unit = self._unit(element.suffix)
         value = float(element.text) * factor
-        return value if unit in ("", self.units[0]) else Quantity(value, unit)
+        return value if unit in ("", *self.units[:1]) else Quantity(value, unit)
 
     def _unit(self, suffix: str) -> tuple[float, str]:
         if not suffix:
@@ -163,7 +164,7 @@ class Limits:
         named = {"MIN": self.minimum, "MAX": self.maximum, "DEF": self.default}
         number = named[value] if isinstance(value, str) else as_float(value)
         # A relative rounding error is no reason to refuse a limit computed elsewhere.
-        slack = 1e-9 * abs(number)
+        slack = 1e-9 * abs(number) if math.isfinite(number) else 0.0
         if not self.minimum - slack <= number <= self.maximum + slack:
             raise ScpiError(-222)
         return min(max(number, self.minimum), self.maximum)

@@ -53,6 +53,8 @@ class _Client:
     inbox: bytearray = field(default_factory=bytearray)
     outbox: bytearray = field(default_factory=bytearray)
     last_due_s: float = 0.0
+    unanswered: int = 0
+    finished: bool = False
     gone: bool = False
 
 
@@ -94,14 +96,14 @@ class PracticeServer:
 
     def put_board(self, board: Board | None) -> None:
         """Put a board on the table; None bypasses it."""
-        self.world.put_board(board)
+        self.world.put_board(board, now_s=time.monotonic())
 
     def __enter__(self) -> Self:
         listeners: list[socket.socket] = []
         try:
             for port in self._ports:
                 listeners.append(_listen(self._host, port))  # noqa: PERF401 - closed below when one fails
-        except InstrumentError:
+        except (InstrumentError, Misuse):
             _close_all(listeners)
             raise
         self._addresses = Addresses(
@@ -199,11 +201,12 @@ class _Loop:
         except OSError:
             data = b""
         if not data:
-            self._drop(client)
+            self._finish(client)
             return
         client.inbox += data
         *lines, rest = client.inbox.split(b"\n")
         client.inbox = bytearray(rest)
+        client.unanswered += len(lines)
         client.station.waiting.extend((client, bytes(line).decode("latin-1")) for line in lines)
         if len(client.inbox) > LONGEST_MESSAGE:
             client.inbox.clear()
@@ -215,12 +218,14 @@ class _Loop:
             client, message = station.waiting.popleft()
             response = station.instrument.handle(message, now_s)
             if response is None:
+                self._answered(client)
                 continue
             station.busy_until_s = response.ready_at_s
             due_s = max(response.ready_at_s, client.last_due_s)
             for piece in station.unkindness.spoil(response.text.encode("latin-1") + b"\n"):
                 due_s += piece.pause_s
                 heappush(self._due, (due_s, next(self._order), client, piece.data))
+            heappush(self._due, (due_s, next(self._order), client, b""))
             client.last_due_s = due_s
 
     def _deliver(self, now_s: float) -> None:
@@ -230,9 +235,25 @@ class _Loop:
                 continue
             if data is None:
                 self._drop(client)
-            else:
+            elif data:
                 client.outbox += data
                 self._flush(client)
+            else:
+                self._answered(client)
+
+    def _answered(self, client: _Client) -> None:
+        """Count a message as done; whoever sends no more is let go after the last."""
+        client.unanswered -= 1
+        if client.finished and not client.unanswered and not client.gone:
+            self._drop(client)
+
+    def _finish(self, client: _Client) -> None:
+        """Let a client go that sends no more, once it has been answered."""
+        # An ended stream is readable for ever; there is nothing left to wait for.
+        self._selector.unregister(client.socket)
+        client.finished = True
+        if not client.unanswered:
+            self._drop(client)
 
     def _flush(self, client: _Client) -> None:
         """Send what can be sent; a client that does not read is asked again when it does."""
@@ -244,17 +265,21 @@ class _Loop:
             self._drop(client)
             return
         del client.outbox[:sent]
-        writing = selectors.EVENT_WRITE if client.outbox else 0
-        self._selector.modify(client.socket, selectors.EVENT_READ | writing, client)
+        if not client.finished:
+            writing = selectors.EVENT_WRITE if client.outbox else 0
+            self._selector.modify(client.socket, selectors.EVENT_READ | writing, client)
 
     def _drop(self, client: _Client) -> None:
         client.gone = True
-        self._selector.unregister(client.socket)
+        if not client.finished:
+            self._selector.unregister(client.socket)
         client.socket.close()
         self._clients.remove(client)
 
 
 def _listen(host: str, port: int) -> socket.socket:
+    if not host.startswith("127."):
+        raise Misuse(f"the practice bench is for this machine only, not for {host}")
     try:
         return socket.create_server((host, port))
     except OSError as error:

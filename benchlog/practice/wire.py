@@ -11,7 +11,7 @@ from benchlog.errors import IdentityError, LinkLost, LinkRefused, LinkTimeout, M
 from benchlog.practice.bench import Role, make_instruments
 from benchlog.practice.faults import Fault, Unkindness
 from benchlog.practice.scpi import Instrument
-from benchlog.practice.world import World
+from benchlog.practice.world import Board, World
 
 DRAIN_S = 0.1
 
@@ -173,6 +173,10 @@ class PracticeWires:
         self.instruments = make_instruments(world)
         self._faults = dict(faults or {})
         self.addresses: dict[Role, str] = {role: f"practice::{role}" for role in self.instruments}
+
+    def put_board(self, board: Board | None) -> None:
+        """Put a board on the table now; None bypasses it."""
+        self.world.put_board(board, now_s=self.clock.now_s())
 
     def open(self, role: Role) -> PracticeWire:
         """Return a new wire to one of the instruments."""

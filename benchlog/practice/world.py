@@ -11,6 +11,11 @@ from typing import Literal, Protocol, TypeAlias
 
 Place: TypeAlias = Literal["input", "output"]
 
+BOARDS_REMEMBERED = 256
+"""For how many boards the readings are counted; enough for any comparison, and bounded."""
+
+DRIVES_REMEMBERED = 256
+
 _NORMAL = NormalDist()
 
 
@@ -96,8 +101,7 @@ class World:
         self._board: Board = board or Bypass()
         self._drive = Drive()
         self._changed_s = float("-inf")
-        self._board_moved = False
-        self._counts: dict[tuple[str, Place, Drive], int] = {}
+        self._counts: dict[str, dict[tuple[Place, Drive], int]] = {}
         self._known: dict[Drive, Levels] = {}
 
     @property
@@ -112,12 +116,18 @@ class World:
         with self._lock:
             return self._drive
 
-    def put_board(self, board: Board | None) -> None:
-        """Put a board on the table; None bypasses it with a cable."""
+    def put_board(self, board: Board | None, *, now_s: float | None = None) -> None:
+        """Put a board on the table; None bypasses it with a cable.
+
+        Args:
+            board: The board.
+            now_s: When, so that whoever reads too soon sees it settle; None is long ago.
+        """
         with self._lock:
             self._board = board or Bypass()
             self._known.clear()
-            self._board_moved = True
+            if now_s is not None:
+                self._changed_s = now_s
 
     def set_drive(self, drive: Drive, now_s: float) -> None:
         """Change what the source puts out; the same again is no change."""
@@ -134,18 +144,21 @@ class World:
         shows the same digits.
         """
         with self._lock:
-            if self._board_moved:
-                # Whoever moved the board had no clock: it has been moved just now.
-                self._board_moved, self._changed_s = False, now_s
             drive, label = self._drive, self._board.label
-            key = (label, place, drive)
-            count = self._counts[key] = self._counts.get(key, 0) + 1
             return Look(
                 drive=drive,
                 level_vrms=self._level(place),
                 since_change_s=now_s - self._changed_s,
-                draw=normal_draw(self.seed, label, place, drive, count),
+                draw=normal_draw(self.seed, label, place, drive, self._count(label, place)),
             )
+
+    def _count(self, label: str, place: Place) -> int:
+        counts = self._counts.setdefault(label, {})
+        key = (place, self._drive)
+        counts[key] = counts.get(key, 0) + 1
+        while len(self._counts) > BOARDS_REMEMBERED:
+            del self._counts[next(iter(self._counts))]
+        return counts[key]
 
     def _level(self, place: Place) -> float:
         levels = self._levels()
@@ -157,7 +170,7 @@ class World:
         drive = self._drive
         if drive not in self._known:
             emf_vrms = drive.emf_vrms if drive.on else 0.0
-            if len(self._known) > 256:
+            if len(self._known) >= DRIVES_REMEMBERED:
                 self._known.clear()
             self._known[drive] = self._board.levels(
                 drive.frequency_hz, emf_vrms, source_ohm=drive.source_ohm
