@@ -48,7 +48,7 @@ def _to(state: State) -> Branches:
 
 # Trouble while a point is being measured starts that point again from the beginning: after it
 # nobody knows what the instruments are set to, nor which answer belongs to which question.
-_MEASURING = (
+MEASURING = (
     State.PREPARING,
     State.SETTING,
     State.CHECKING_SETTING,
@@ -86,11 +86,11 @@ TABLE: dict[tuple[State, type[Event]], Branches] = {
     (State.STEPPING, Done): _to(State.SETTLING),
     # trouble
     (State.RECOVERING, Done): _to(State.PREPARING),
-    **{(state, Trouble): _AGAIN_OR_OFF for state in _MEASURING},
+    **{(state, Trouble): _AGAIN_OR_OFF for state in MEASURING},
     # a point that could not be kept is not measured again as if nothing had happened
     (State.KEEPING, Trouble): _to(State.SWITCHING_OFF),
     # stop
-    **{(state, Stop): _to(State.SWITCHING_OFF) for state in (*_MEASURING, State.KEEPING)},
+    **{(state, Stop): _to(State.SWITCHING_OFF) for state in (*MEASURING, State.KEEPING)},
     # the way out: there is one, and it switches the source off
     (State.SWITCHING_OFF, Done): _to(State.ENDED),
     (State.SWITCHING_OFF, Trouble): (
