@@ -6,8 +6,9 @@ import math
 # the RMS asked for is (pi/2) sqrt(2/3) / x, with x = 2 pi f Vp / SR.
 _TRIANGLE = math.pi / 2 * math.sqrt(2 / 3)
 
-# Bends the curve so that 10 % and 25 % beyond the limit lose about 2 % and 8 %.
-_ONSET = 0.33
+# Bends the curve so that 10 % and 25 % beyond the limit lose about 2 % and 8 %, and the level never
+# falls when more is asked for.
+_ONSET = 0.28
 
 
 def clipped_vrms(level_vrms: float, swing_v: float | None) -> float:
