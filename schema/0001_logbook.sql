@@ -40,7 +40,9 @@ CREATE TABLE instrument (
   calibration_due TEXT
 ) STRICT;
 CREATE UNIQUE INDEX instrument_once
-  ON instrument (identity, role, address, driver, coalesce(calibration_due, ''));
+  ON instrument (
+    identity, role, address, driver, calibration_due IS NULL, coalesce(calibration_due, '')
+  );
 
 CREATE TABLE sweep (
   id INTEGER PRIMARY KEY,
@@ -77,8 +79,6 @@ CREATE TABLE sweep_instrument (
 CREATE INDEX sweep_by_instrument ON sweep_instrument (instrument, sweep);
 
 -- One row is one point; repeat is 0 for the point of the curve and 1, 2, ... for later checks of it.
--- Most gains are output_vrms / input_vrms to the last bit and cost nothing: gain_given is NULL then.
--- gain_given = -1 says that there is no gain although both levels are known.
 CREATE TABLE point (
   sweep INTEGER NOT NULL REFERENCES sweep (id),
   position INTEGER NOT NULL CHECK (position >= 0),
@@ -87,14 +87,10 @@ CREATE TABLE point (
   level_vrms REAL NOT NULL CHECK (level_vrms >= 0 AND level_vrms < 9e999),
   input_vrms REAL CHECK (input_vrms >= 0 AND input_vrms < 9e999),
   output_vrms REAL CHECK (output_vrms >= 0 AND output_vrms < 9e999),
-  gain_given REAL CHECK (gain_given = -1 OR (gain_given >= 0 AND gain_given < 9e999)),
+  gain REAL CHECK (gain >= 0 AND gain < 9e999),
   u_gain_rel REAL CHECK (u_gain_rel >= 0 AND u_gain_rel < 9e999),
   phase_deg REAL CHECK (abs(phase_deg) < 9e999),
   flags INTEGER NOT NULL CHECK (flags >= 0),
-  gain REAL GENERATED ALWAYS AS (
-    CASE WHEN gain_given IS NULL THEN output_vrms / input_vrms
-         WHEN gain_given >= 0 THEN gain_given END
-  ) VIRTUAL,
   PRIMARY KEY (sweep, position, repeat)
 ) STRICT, WITHOUT ROWID;
 
@@ -109,12 +105,13 @@ CREATE TABLE point_story (
   FOREIGN KEY (sweep, position, repeat) REFERENCES point (sweep, position, repeat)
 ) STRICT, WITHOUT ROWID;
 
--- A sweep without this row is unfinished.
+-- A sweep without this row is unfinished.  points counts the rows the sweep had, checks included.
 CREATE TABLE sweep_end (
   sweep INTEGER PRIMARY KEY REFERENCES sweep (id),
   state TEXT NOT NULL CHECK (state IN ('complete', 'stopped', 'failed')),
   why TEXT NOT NULL,
-  ended_at TEXT NOT NULL
+  ended_at TEXT NOT NULL,
+  points INTEGER NOT NULL CHECK (points >= 0)
 ) STRICT;
 
 CREATE TRIGGER point_comes_before_the_end BEFORE INSERT ON point

@@ -1,10 +1,10 @@
 """What became of a board, or of many: one row for each sweep, with its verdict of record."""
 
 import sqlite3
-from collections.abc import Sequence
-from dataclasses import dataclass, fields
+from collections.abc import Callable, Sequence
+from dataclasses import fields
 from datetime import date
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, TypedDict
 
 from benchlog.errors import LogbookError
 from benchlog.logbook import door, names
@@ -33,46 +33,48 @@ LEFT JOIN {names.FIGURES} f ON f.id = coalesce(v.figures, (
 """
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Filters:
-    """Which sweeps a history shows; every None lets all through.
+class Wanted(TypedDict, total=False):
+    """Which sweeps a history shows; what is left out or None lets all through.
 
     Attributes:
-        serial: The board, exactly.
-        design: Name of the design, or the start of its SHA-256.
+        design: Name of the design, or at least six digits from the start of its SHA-256.
         verdict: The word of the verdict of record.
         since, until: First and last day (whole days, UTC) or moment of the sweep's start.
         lot, operator: Exactly as recorded.
-        instrument: Part of the identity of an instrument that was used.
+        instrument: Part of the identity of an instrument that was used, capitals or not.
         limit: At most so many, the newest.
     """
 
-    serial: str | None = None
-    design: str | None = None
-    verdict: str | None = None
-    since: str | date | None = None
-    until: str | date | None = None
-    lot: str | None = None
-    operator: str | None = None
-    instrument: str | None = None
-    limit: int | None = None
+    design: str | None
+    verdict: str | None
+    since: str | date | None
+    until: str | date | None
+    lot: str | None
+    operator: str | None
+    instrument: str | None
+    limit: int | None
 
 
-def history(connection: sqlite3.Connection, wanted: Filters) -> tuple[HistoryRow, ...]:
-    """Return the sweeps that pass the filters, oldest first.
+def history(
+    connection: sqlite3.Connection, serial: str | None, wanted: Wanted
+) -> tuple[HistoryRow, ...]:
+    """Return the sweeps of a serial (or of all) that pass the filters, oldest first.
 
     Raises:
         LogbookError: A filter is not a date or not a verdict.
     """
-    conditions, values = _conditions(wanted)
-    sql = _HISTORY
-    if conditions:
-        sql += " WHERE " + " AND ".join(conditions)
-    sql += " ORDER BY s.started_at DESC, s.id DESC"
-    if wanted.limit is not None:
-        sql += " LIMIT ?"
-        values.append(int(wanted.limit))
-    found = connection.execute(sql, values).fetchall()
+    asked = {"serial": serial, **wanted}
+    limit = asked.pop("limit", None)
+    given = {name: value for name, value in asked.items() if value is not None}
+    if unknown := given.keys() - _CONDITION.keys():
+        raise TypeError(f"history has no filter {', '.join(sorted(unknown))}")
+    values = [_READ_VALUE.get(name, str)(value) for name, value in given.items()]
+    where = " AND ".join(_CONDITION[name] for name in given)
+    found = connection.execute(
+        f"{_HISTORY} {'WHERE' if where else ''} {where}"
+        " ORDER BY s.started_at DESC, s.id DESC LIMIT ?",
+        (*values, -1 if limit is None else limit),
+    ).fetchall()
     return tuple(_history_row(row) for row in reversed(found))
 
 
@@ -98,38 +100,37 @@ def history_frame(rows: Sequence[HistoryRow]) -> "pd.DataFrame":
     return frame
 
 
-def _conditions(wanted: Filters) -> tuple[list[str], list[Any]]:
-    verdict = None if wanted.verdict is None else _verdict_word(wanted.verdict)
-    asked: list[tuple[str, Any]] = [
-        ("s.serial = ?", wanted.serial),
-        ("v.overall = ?", verdict),
-        ("s.started_at >= ?", None if wanted.since is None else door.earliest(wanted.since)),
-        ("s.started_at < ?", None if wanted.until is None else door.latest(wanted.until)),
-        ("s.lot = ?", wanted.lot),
-        ("s.operator = ?", wanted.operator),
-        (_BY_DESIGN, wanted.design),
-        (_BY_INSTRUMENT, wanted.instrument),
-    ]
-    given = [(condition, value) for condition, value in asked if value is not None]
-    return [condition for condition, _ in given], [value for _, value in given]
-
-
-_BY_DESIGN = f"""s.design IN (
-  SELECT id FROM {names.DESIGN}, (SELECT ? AS asked)
-  WHERE name = asked OR (length(asked) >= 6 AND substr(sha256, 1, length(asked)) = lower(asked)))"""
-
-_BY_INSTRUMENT = f"""s.id IN (
-  SELECT used.sweep FROM {names.INSTRUMENT} i
-  JOIN {names.SWEEP_INSTRUMENT} used ON used.instrument = i.id
-  WHERE instr(lower(i.identity), lower(?)) > 0)"""
-
-
 def _verdict_word(word: str) -> str:
     if word not in VERDICT_ORDER:
         raise LogbookError(
-            f"{word!r} is no verdict", expected=", ".join(VERDICT_ORDER), where="verdict"
+            f"{word!r} is no verdict", where="verdict", expected=", ".join(VERDICT_ORDER)
         )
     return word
+
+
+_CONDITION = {
+    "serial": "s.serial = ?",
+    "verdict": "v.overall = ?",
+    "since": "s.started_at >= ?",
+    "until": "s.started_at < ?",
+    "lot": "s.lot = ?",
+    "operator": "s.operator = ?",
+    "design": f"""s.design IN (
+        SELECT id FROM {names.DESIGN}, (SELECT ? AS asked)
+        WHERE name = asked
+        OR (length(asked) >= 6 AND substr(sha256, 1, length(asked)) = lower(asked)))""",
+    "instrument": f"""s.id IN (
+        SELECT used.sweep FROM {names.INSTRUMENT} i
+        JOIN {names.SWEEP_INSTRUMENT} used ON used.instrument = i.id
+        WHERE instr(lower(i.identity), lower(?)) > 0)""",
+}
+
+# How a filter's value is read; all others are plain text.
+_READ_VALUE: dict[str, Callable[[Any], str]] = {
+    "verdict": _verdict_word,
+    "since": door.earliest,
+    "until": door.latest,
+}
 
 
 def _history_row(row: tuple[Any, ...]) -> HistoryRow:

@@ -13,7 +13,7 @@ from benchlog.folders import data_folder
 from benchlog.logbook import names
 from benchlog.logbook.door import utc_now
 from benchlog.logbook.journal import journal_mode
-from benchlog.logbook.refusal import said_plainly
+from benchlog.logbook.refusal import damaged, said_plainly
 from benchlog.logbook.transaction import Writer
 
 if TYPE_CHECKING:
@@ -204,11 +204,10 @@ def _check_tables(connection: sqlite3.Connection, path: Path) -> None:
     found = {row[0] for row in connection.execute("SELECT name FROM sqlite_master")}
     missing = [name for name in names.KEPT_TABLES if name not in found]
     if missing:
-        raise LogbookError(
-            f"the logbook is damaged: table {', '.join(missing)} is missing",
-            where=str(path),
-            hint="keep the file as it is and go back to a backup",
-        )
+        raise damaged(f"table {', '.join(missing)} is missing").at(str(path))
+    this = f"SELECT count(*) FROM {names.LOGBOOK} WHERE id = ?"
+    if connection.execute(this, (names.THIS_LOGBOOK,)).fetchone()[0] != 1:
+        raise damaged("its own name is missing").at(str(path))
 
 
 def _choose_journal(connection: sqlite3.Connection, path: Path) -> None:

@@ -7,6 +7,8 @@ from pathlib import Path
 
 from benchlog.errors import LogbookError
 
+_GO_BACK = "keep the file as it is and go back to a backup"
+
 # SQLite's primary result code is the low byte of the extended one.
 _WHAT_AND_HINT = {
     sqlite3.SQLITE_BUSY: (
@@ -27,7 +29,7 @@ _WHAT_AND_HINT = {
     ),
     sqlite3.SQLITE_CORRUPT: (
         "the logbook is damaged",
-        "keep the file as it is and go back to a backup",
+        _GO_BACK,
     ),
     sqlite3.SQLITE_CANTOPEN: (
         "the logbook cannot be opened",
@@ -58,6 +60,11 @@ def refusal(error: sqlite3.Error, path: Path) -> LogbookError:
     """Return the error that tells a person what SQLite said and what to do."""
     what, hint = _WHAT_AND_HINT.get(primary_code(error), _UNKNOWN)
     return LogbookError(f"{what} ({error})", where=str(path), hint=hint)
+
+
+def damaged(what: str) -> LogbookError:
+    """Return the error for a file that holds what no logbook can hold."""
+    return LogbookError(f"the logbook is damaged: {what}", hint=_GO_BACK)
 
 
 def is_busy(error: sqlite3.Error) -> bool:

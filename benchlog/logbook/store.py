@@ -8,10 +8,11 @@ import sqlite3
 from collections.abc import Iterable
 from contextlib import AbstractContextManager
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, Literal, Self
+from typing import TYPE_CHECKING, Literal, Self, Unpack
 
 from benchlog.errors import Misuse
 from benchlog.logbook import history, read, write
+from benchlog.logbook.history import Wanted
 from benchlog.logbook.open import applied_migrations, open_connection
 from benchlog.logbook.refusal import said_plainly
 from benchlog.logbook.rows import (
@@ -227,12 +228,14 @@ class Logbook:
         with said_plainly(self.path):
             return read.latest_verdict(self._connection, self._sweep_id(uuid))
 
-    def history(self, serial: str | None = None, **wanted: Any) -> tuple[HistoryRow, ...]:  # noqa: ANN401
-        """Return one row for each sweep that passes the filters, oldest first."""
+    def history(
+        self, serial: str | None = None, **wanted: Unpack[Wanted]
+    ) -> tuple[HistoryRow, ...]:
+        """Return one row for each sweep that passes the filters (see ``Wanted``), oldest first."""
         with said_plainly(self.path):
-            return history.history(self._connection, history.Filters(serial=serial, **wanted))
+            return history.history(self._connection, serial, wanted)
 
-    def history_frame(self, serial: str | None = None, **wanted: Any) -> "pd.DataFrame":  # noqa: ANN401
+    def history_frame(self, serial: str | None = None, **wanted: Unpack[Wanted]) -> "pd.DataFrame":
         """Return the same as a pandas frame: a column for each field, figure and its u."""
         return history.history_frame(self.history(serial, **wanted))
 

@@ -12,9 +12,6 @@ from benchlog.records import FIGURE_NAMES, Figures, InstrumentUsed, Point, Sweep
 
 Row: TypeAlias = tuple[Any, ...]
 
-NO_GAIN = -1.0
-"""Stored in ``gain_given`` where there is no gain although both levels are known."""
-
 _SWEEP_COLUMNS = (
     "uuid, origin, serial, kind, started_at, design, reference, source_ohm, simulated,"
     " operator, lot, reason, note, settings, terms, capture_sha256"
@@ -24,7 +21,7 @@ _INSERT_SWEEP = (
 )
 _INSERT_POINT = (
     f"INSERT INTO {names.POINT} (sweep, position, repeat, frequency_hz, level_vrms, input_vrms,"
-    " output_vrms, gain_given, u_gain_rel, phase_deg, flags)"
+    " output_vrms, gain, u_gain_rel, phase_deg, flags)"
     " VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)"
 )
 _INSERT_STORY = (
@@ -44,6 +41,7 @@ _INSERT_VERDICT = (
     " (figures, origin, number, made_at, overall, design, budget, record)"
     " VALUES (?, ?, ?, ?, ?, ?, ?, ?) RETURNING id"
 )
+_COUNT_POINTS = f"SELECT count(*) FROM {names.POINT} WHERE sweep = ?"
 _LAST_REPEAT = f"SELECT max(repeat) FROM {names.POINT} WHERE sweep = ? AND position = ?"
 _LAST_FIGURES = f"SELECT max(number) FROM {names.FIGURES} WHERE sweep = ?"
 # Verdicts are counted over all figures of a sweep, so that the newest decision is the highest.
@@ -106,7 +104,7 @@ def design(
 def begin_sweep(connection: sqlite3.Connection, start: SweepStart, design_id: int | None) -> None:
     """Write a sweep's start and its instruments."""
     row = (
-        start.uuid,
+        door.uuid(start.uuid),
         names.THIS_LOGBOOK,
         door.text(start.serial, "serial"),
         start.kind,
@@ -144,7 +142,7 @@ def instrument(connection: sqlite3.Connection, used: InstrumentUsed) -> int:
     )
     found = connection.execute(
         f"SELECT id FROM {names.INSTRUMENT} WHERE identity = ? AND role = ? AND address = ?"
-        " AND driver = ? AND coalesce(calibration_due, '') = coalesce(?, '')",
+        " AND driver = ? AND calibration_due IS ?",
         row,
     ).fetchone()
     if found is not None:
@@ -158,13 +156,18 @@ def instrument(connection: sqlite3.Connection, used: InstrumentUsed) -> int:
 
 
 def add_points(connection: sqlite3.Connection, uuid: str, points: Iterable[Point]) -> None:
-    """Write points of a sweep."""
+    """Write points of a sweep.
+
+    Raises:
+        LogbookError: The sweep is unknown or has ended, or a point is not one.
+    """
     sweep = sweep_id(connection, uuid)
+    _refuse_if_ended(connection, sweep, uuid)
     rows: list[Row] = []
     stories: list[Row] = []
     checks: dict[int, int] = {}
     for point in points:
-        position = door.whole(point.position)
+        position = door.whole(point.position, "position")
         repeat = 0
         if point.kind == "check":
             repeat = checks.get(position) or _next(connection, _LAST_REPEAT, sweep, position)
@@ -172,7 +175,7 @@ def add_points(connection: sqlite3.Connection, uuid: str, points: Iterable[Point
         rows.append((sweep, position, repeat, *_measured(point)))
         if point.attempts != 1 or point.raw is not None:
             raw = None if point.raw is None else door.text(point.raw, "raw reply")
-            stories.append((sweep, position, repeat, door.whole(point.attempts), raw))
+            stories.append((sweep, position, repeat, door.whole(point.attempts, "attempts"), raw))
     connection.executemany(_INSERT_POINT, rows)
     if stories:
         connection.executemany(_INSERT_STORY, stories)
@@ -180,9 +183,13 @@ def add_points(connection: sqlite3.Connection, uuid: str, points: Iterable[Point
 
 def end_sweep(connection: sqlite3.Connection, uuid: str, *, state: str, why: str) -> None:
     """Write a sweep's one end row."""
+    sweep = sweep_id(connection, uuid)
+    _refuse_if_ended(connection, sweep, uuid)
+    (points,) = connection.execute(_COUNT_POINTS, (sweep,)).fetchone()
     connection.execute(
-        f"INSERT INTO {names.SWEEP_END} (sweep, state, why, ended_at) VALUES (?, ?, ?, ?)",
-        (sweep_id(connection, uuid), state, door.text(why, "why"), door.utc_now()),
+        f"INSERT INTO {names.SWEEP_END} (sweep, state, why, ended_at, points)"
+        " VALUES (?, ?, ?, ?, ?)",
+        (sweep, state, door.text(why, "why"), door.utc_now(), points),
     )
 
 
@@ -247,33 +254,26 @@ def design_judged(
     return design(connection, sha256, text=None, name="", revision="")
 
 
+def _refuse_if_ended(connection: sqlite3.Connection, sweep: int, uuid: str) -> None:
+    row = connection.execute(
+        f"SELECT state FROM {names.SWEEP_END} WHERE sweep = ?", (sweep,)
+    ).fetchone()
+    if row is not None:
+        raise LogbookError(f"sweep {uuid} has ended already ({row[0]}) and takes nothing more")
+
+
 def _measured(point: Point) -> Row:
     """Return the stored numbers of a point, from its frequency on."""
-    input_vrms = door.number_or_none(point.input_vrms, "input_vrms")
-    output_vrms = door.number_or_none(point.output_vrms, "output_vrms")
-    gain = door.number_or_none(point.gain, "gain")
     return (
         door.number(point.frequency_hz, "frequency_hz"),
         door.number(point.level_vrms, "level_vrms"),
-        input_vrms,
-        output_vrms,
-        _gain_given(gain, input_vrms, output_vrms),
+        door.number_or_none(point.input_vrms, "input_vrms"),
+        door.number_or_none(point.output_vrms, "output_vrms"),
+        door.number_or_none(point.gain, "gain"),
         door.number_or_none(point.u_gain_rel, "u_gain_rel"),
         door.number_or_none(point.phase_deg, "phase_deg"),
-        door.whole(point.flags),
+        door.whole(point.flags, "flags"),
     )
-
-
-def _gain_given(
-    gain: float | None, input_vrms: float | None, output_vrms: float | None
-) -> float | None:
-    """Return None where the file's own quotient is the gain, to save its eight bytes."""
-    quotient = None
-    if input_vrms and output_vrms is not None:
-        quotient = output_vrms / input_vrms
-    if gain == quotient:
-        return None
-    return NO_GAIN if gain is None else gain
 
 
 def _figure_values(figures: Figures) -> Row:
