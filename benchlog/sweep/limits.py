@@ -4,6 +4,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from benchlog.errors import ScheduleError
+from benchlog.notation import si
 from benchlog.sweep.schedule import Schedule
 
 # Levels come from conversions such as "20 mVpp" times 10 and may miss a round limit by rounding.
@@ -67,17 +68,17 @@ def check_bench(schedule: Schedule, limits: BenchLimits) -> None:
         for band in limits.bands:
             if not band.low_hz <= step.frequency_hz <= band.high_hz:
                 raise ScheduleError(
-                    f"the {band.name} does not cover {step.frequency_hz:.6g} Hz",
+                    f"the {band.name} does not cover {si(step.frequency_hz, 'Hz', 6)}",
                     where=_point(step.position),
-                    expected=f"{band.low_hz:.6g} Hz to {band.high_hz:.6g} Hz",
+                    expected=f"{si(band.low_hz, 'Hz', 6)} to {si(band.high_hz, 'Hz', 6)}",
                     hint="change start or stop, or use another instrument",
                 )
         low, high = limits.source_low_vrms, limits.source_high_vrms
         if not low * (1 - _ROUNDING) <= step.level_vrms <= high * (1 + _ROUNDING):
             raise ScheduleError(
-                f"the source cannot be set to {step.level_vrms:.4g} V RMS",
+                f"the source cannot be set to {si(step.level_vrms, 'Vrms')}",
                 where=_point(step.position),
-                expected=f"{low:.4g} V RMS to {high:.4g} V RMS",
+                expected=f"{si(low, 'Vrms')} to {si(high, 'Vrms')}",
                 hint="change the level, or fit another attenuator and enter it in the bench file",
             )
 
@@ -99,19 +100,20 @@ def check_harm(
     for step in schedule.steps:
         if ceiling_vrms is not None and step.level_vrms > ceiling_vrms * (1 + _ROUNDING):
             raise ScheduleError(
-                f"the source would be set to {step.level_vrms:.4g} V RMS, over the bench's ceiling",
+                f"the source would be set to {si(step.level_vrms, 'Vrms')},"
+                " over the bench's ceiling",
                 where=_point(step.position),
-                expected=f"at most {ceiling_vrms:.4g} V RMS (max_level in the bench file)",
+                expected=f"at most {si(ceiling_vrms, 'Vrms')} (max_level in the bench file)",
                 hint="lower the level; only if you are sure, allow levels beyond the limits",
             )
     for step, limit in zip(schedule.steps, board, strict=bool(board)):
         input_vrms = schedule.at_board(step.level_vrms)
         if input_vrms > limit.level_vrms * (1 + _ROUNDING):
             raise ScheduleError(
-                f"{input_vrms:.4g} V RMS at {step.frequency_hz:.6g} Hz is more than this design"
-                f" bears at its input ({limit.why})",
+                f"{si(input_vrms, 'Vrms')} at {si(step.frequency_hz, 'Hz', 6)} is more than this"
+                f" design bears at its input ({limit.why})",
                 where=_point(step.position),
-                expected=f"at most {limit.level_vrms:.4g} V RMS at the board's input",
+                expected=f"at most {si(limit.level_vrms, 'Vrms')} at the board's input",
                 hint="lower the level in [drive]; only if you are sure, allow levels beyond the"
                 " limits",
             )

@@ -5,6 +5,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from benchlog.errors import ScheduleError
+from benchlog.notation import si
 
 MOST_PER_DECADE = 1000
 # Rounding moves a frequency by at most a hundredth of the distance to its neighbour.
@@ -105,7 +106,7 @@ class Schedule:
         if loudest is None or loudest.output_vrms is None:
             return f"{text}; what its output will give is not known."
         output, frequency_hz = _level(loudest.output_vrms), loudest.frequency_hz
-        return f"{text}, its output at most {output}, at {frequency_hz:.4g} Hz."
+        return f"{text}, its output at most {output}, at {si(frequency_hz, 'Hz')}."
 
 
 def log_spaced(start_hz: float, stop_hz: float, per_decade: int) -> tuple[float, ...]:
@@ -135,7 +136,7 @@ def log_spaced(start_hz: float, stop_hz: float, per_decade: int) -> tuple[float,
             )
     if stop_hz < start_hz:
         raise ScheduleError(
-            f"stop ({stop_hz:.6g} Hz) lies below start ({start_hz:.6g} Hz)",
+            f"stop ({si(stop_hz, 'Hz')}) lies below start ({si(start_hz, 'Hz')})",
             where="sweep.stop",
             expected="a stop at or above the start",
             hint="swap the two",
@@ -208,6 +209,4 @@ def _check_step(step: Step) -> None:
 
 def _level(vrms: float) -> str:
     """Write a level as people set it on a bench."""
-    scale, unit = (1.0, "V") if vrms >= 1 else (1e3, "mV")
-    peak_to_peak = 2 * math.sqrt(2) * vrms
-    return f"{vrms * scale:.4g} {unit}rms ({peak_to_peak * scale:.4g} {unit}pp)"
+    return f"{si(vrms, 'Vrms')} ({si(2 * math.sqrt(2) * vrms, 'Vpp')})"

@@ -37,21 +37,21 @@ def test_the_edges_are_allowed(frequency_hz: float, level_vrms: float) -> None:
             0.1,
             "the output meter does not cover 2.9 Hz\n"
             "  where:    schedule, point 2\n"
-            "  expected: 3 Hz to 300000 Hz\n"
+            "  expected: 3 Hz to 300 kHz\n"
             "  do:       change start or stop, or use another instrument",
         ),
-        ([0.5], 0.1, "the source does not cover 0.5 Hz"),
-        ([3.1e5], 0.1, "the output meter does not cover 310000 Hz"),
+        ([0.5], 0.1, "the source does not cover 500 mHz"),
+        ([3.1e5], 0.1, "the output meter does not cover 310 kHz"),
         (
             [10.0],
             0.0009,
-            "the source cannot be set to 0.0009 V RMS\n"
+            "the source cannot be set to 900 uVrms\n"
             "  where:    schedule, point 1\n"
-            "  expected: 0.001 V RMS to 5 V RMS\n"
+            "  expected: 1 mVrms to 5 Vrms\n"
             "  do:       change the level, or fit another attenuator and enter it in the bench"
             " file",
         ),
-        ([10.0], 5.1, "the source cannot be set to 5.1 V RMS"),
+        ([10.0], 5.1, "the source cannot be set to 5.1 Vrms"),
     ],
 )
 def test_what_instruments_cannot_do(
@@ -70,9 +70,9 @@ def test_the_ceiling_of_the_bench() -> None:
         check_harm(spaced_schedule([10.0], 0.11, attenuation=10.0), BENCH)
 
     assert str(caught.value) == (
-        "the source would be set to 1.1 V RMS, over the bench's ceiling\n"
+        "the source would be set to 1.1 Vrms, over the bench's ceiling\n"
         "  where:    schedule, point 1\n"
-        "  expected: at most 1 V RMS (max_level in the bench file)\n"
+        "  expected: at most 1 Vrms (max_level in the bench file)\n"
         "  do:       lower the level; only if you are sure, allow levels beyond the limits"
     )
 
@@ -88,9 +88,9 @@ def test_what_the_design_bears() -> None:
         check_harm(spaced_schedule([10.0, 1e5], 0.1), BENCH, board=board)
 
     assert str(caught.value) == (
-        "0.1 V RMS at 100000 Hz is more than this design bears at its input (slew rate)\n"
+        "100 mVrms at 100 kHz is more than this design bears at its input (slew rate)\n"
         "  where:    schedule, point 2\n"
-        "  expected: at most 0.05 V RMS at the board's input\n"
+        "  expected: at most 50 mVrms at the board's input\n"
         "  do:       lower the level in [drive]; only if you are sure, allow levels beyond the"
         " limits"
     )

@@ -70,7 +70,7 @@ def test_laws_of_spacing(start_hz: float, decades: float, per_decade: int) -> No
         (-1.0, 1e3, 10, "start is -1 Hz"),
         (math.nan, 1e3, 10, "start is nan Hz"),
         (10.0, math.inf, 10, "stop is inf Hz"),
-        (1e3, 10.0, 10, "stop (10 Hz) lies below start (1000 Hz)"),
+        (1e3, 10.0, 10, "stop (10 Hz) lies below start (1 kHz)"),
         (10.0, 1e3, 0, "0 points per decade"),
         (10.0, 1e3, 1001, "1001 points per decade"),
     ],
