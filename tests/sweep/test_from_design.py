@@ -139,15 +139,25 @@ def test_a_design_without_a_level() -> None:
     ("amplifier", "rails_v", "level_vrms", "why"),
     [
         # 80 % of 10.5 V peak over gain 48: 0.175 V peak, 0.1237 V RMS
-        ({"output_swing_v": 10.5}, None, 0.8 * 10.5 / 48 / math.sqrt(2), "output swing of stage 1"),
+        (
+            Amplifier(gbw_hz=3e6, output_swing_v=10.5),
+            None,
+            0.8 * 10.5 / 48 / math.sqrt(2),
+            "output swing of stage 1",
+        ),
         # 80 % of the nearer rail
-        ({}, (-12.0, 15.0), 0.8 * 12 / 48 / math.sqrt(2), "rails"),
+        (Amplifier(gbw_hz=3e6), (-12.0, 15.0), 0.8 * 12 / 48 / math.sqrt(2), "rails"),
         # one supply: half of it either way
-        ({}, (0.0, 12.0), 0.8 * 6 / 48 / math.sqrt(2), "rails"),
-        ({"output_swing_v": 5.0}, (-12.0, 12.0), 0.8 * 5 / 48 / math.sqrt(2), "output swing of"),
+        (Amplifier(gbw_hz=3e6), (0.0, 12.0), 0.8 * 6 / 48 / math.sqrt(2), "rails"),
+        (
+            Amplifier(gbw_hz=3e6, output_swing_v=5.0),
+            (-12.0, 12.0),
+            0.8 * 5 / 48 / math.sqrt(2),
+            "output swing of",
+        ),
         # a third of 0.3 V/us at 10 kHz over the gain there
         (
-            {"slew_rate_v_per_s": 0.3e6},
+            Amplifier(gbw_hz=3e6, slew_rate_v_per_s=0.3e6),
             None,
             0.1e6 / (2 * math.pi * 1e4) / (48 / math.hypot(1, 1e4 / 62.5e3)) / math.sqrt(2),
             "slew rate of stage 1",
@@ -155,7 +165,7 @@ def test_a_design_without_a_level() -> None:
     ],
 )
 def test_what_a_board_bears(
-    amplifier: dict[str, float],
+    amplifier: Amplifier,
     rails_v: tuple[float, float] | None,
     level_vrms: float,
     why: str,
@@ -165,9 +175,7 @@ def test_what_a_board_bears(
     Source:
         A sine of peak Vp changes by at most 2 pi f Vp; the margins are common practice.
     """
-    made = (replace(Amplifier(gbw_hz=3e6), **amplifier),)
-
-    limit = board_limits(one_stage(amplifiers=made, rails_v=rails_v), [1e4])[0]
+    limit = board_limits(one_stage(amplifiers=(amplifier,), rails_v=rails_v), [1e4])[0]
 
     corner_loss = math.hypot(1, 1e4 / 62.5e3) if "slew" not in why else 1.0
     assert limit.level_vrms == pytest.approx(level_vrms * corner_loss, rel=1e-6)
