@@ -9,9 +9,10 @@ from collections.abc import Mapping
 import numpy as np
 
 from benchlog.curve import ComplexArray, FloatArray
+from benchlog.design.model import Design
 from benchlog.practice.large_signal import clipped_vrms, slewed_vrms
 from benchlog.practice.nodes import Netlist
-from benchlog.practice.parts import PartsList
+from benchlog.practice.parts import PartsList, parts_list
 from benchlog.practice.wiring import BOARD_INPUT, stage_output, wire_board
 from benchlog.practice.world import Levels
 
@@ -25,7 +26,7 @@ class PracticeBoard:
     """One built board.
 
     Args:
-        parts: The parts list of its design.
+        design: What it is built to: a design, or a parts list made elsewhere.
         seed: Chooses its parts inside their tolerances.
         label: Its name on the table; made from the seed when left out.
         spread: False gives every part its nominal value.
@@ -37,13 +38,14 @@ class PracticeBoard:
 
     def __init__(
         self,
-        parts: PartsList,
+        design: Design | PartsList,
         *,
         seed: int = 0,
         label: str | None = None,
         spread: bool = True,
         changes: Mapping[str, float] | None = None,
     ) -> None:
+        parts = design if isinstance(design, PartsList) else parts_list(design)
         self.kinds = parts.kinds
         self.values: Mapping[str, float] = parts.values(
             seed=seed if spread else None, changes=changes
@@ -68,16 +70,20 @@ class PracticeBoard:
         level_vrms = 0.0
         for number, kind in enumerate(self.kinds, start=1):
             asked_vrms = emf_vrms * kept * float(abs(solution.at(stage_output(number))[0]))
-            prefix = f"amplifier.{kind.amplifier}."
-            level_vrms = slewed_vrms(
-                asked_vrms, frequency_hz, self.values.get(prefix + "slew_rate")
-            )
-            level_vrms = clipped_vrms(level_vrms, self.values.get(prefix + "output_swing"))
+            level_vrms = self._limited(asked_vrms, frequency_hz, f"amplifier.{kind.amplifier}.")
             kept *= level_vrms / asked_vrms if asked_vrms else 1.0
         return Levels(
             input_vrms=emf_vrms * float(abs(solution.at(BOARD_INPUT)[0])),
             output_vrms=level_vrms,
             noise_vrms=self.noise_vrms(source_ohm=source_ohm),
+        )
+
+    def _limited(self, asked_vrms: float, frequency_hz: float, prefix: str) -> float:
+        """Return what an amplifier makes of a level; a passive stage names none and limits none."""
+        of = self.values.get
+        level_vrms = slewed_vrms(asked_vrms, frequency_hz, of(prefix + "slew_rate"))
+        return clipped_vrms(
+            level_vrms, of(prefix + "output_swing"), of(prefix + "output_swing_negative")
         )
 
     def noise_vrms(self, *, source_ohm: float = 50.0) -> float:
@@ -89,7 +95,7 @@ class PracticeBoard:
     def _summed_noise(self, net: Netlist) -> float:
         frequency_hz = np.geomspace(*NOISE_BAND_HZ, 141)
         power = np.zeros_like(frequency_hz)
-        for amplifier in range(len(self.kinds)):
+        for amplifier in range(net.amplifier_count):
             solution = net.solve(frequency_hz, from_amplifier=amplifier)
             power += np.abs(solution.at(stage_output(len(self.kinds)))) ** 2
         mean_square = np.trapezoid(power * frequency_hz, np.log(frequency_hz))

@@ -11,23 +11,37 @@ _TRIANGLE = math.pi / 2 * math.sqrt(2 / 3)
 _ONSET = 0.28
 
 
-def clipped_vrms(level_vrms: float, swing_v: float | None) -> float:
-    """Return the RMS level of a sine cut off at plus and minus ``swing_v``.
+def clipped_vrms(
+    level_vrms: float, swing_v: float | None, negative_swing_v: float | None = None
+) -> float:
+    """Return the RMS level, without its mean, of a sine cut off above and below.
 
     Args:
         level_vrms: The sine as it would be without limits, V RMS.
         swing_v: Largest output, V peak; None for no limit.
+        negative_swing_v: Largest output below zero, V peak; None for the same as above.
 
     Source:
-        Mean square of ``min(A |sin t|, V)`` over a quarter period, integrated by hand.
+        Mean and mean square of ``min(A sin t, V)`` over half a period, integrated by hand.
     """
     peak_v = level_vrms * math.sqrt(2)
-    if swing_v is None or peak_v <= swing_v:
+    above_v = math.inf if swing_v is None else swing_v
+    below_v = above_v if negative_swing_v is None else negative_swing_v
+    if peak_v <= min(above_v, below_v):
         return level_vrms
-    angle = math.asin(swing_v / peak_v)
+    mean_above, square_above = _half_wave(peak_v, above_v)
+    mean_below, square_below = _half_wave(peak_v, below_v)
+    mean = (mean_above - mean_below) / 2
+    return math.sqrt((square_above + square_below) / 2 - mean**2)
+
+
+def _half_wave(peak_v: float, limit_v: float) -> tuple[float, float]:
+    """Return mean and mean square of half a sine cut off at a limit."""
+    kept_v = min(limit_v, peak_v)
+    angle = math.asin(kept_v / peak_v)
+    mean = 2 / math.pi * peak_v * (1 - math.cos(angle)) + kept_v * (1 - 2 * angle / math.pi)
     below = peak_v**2 / math.pi * (angle - math.sin(angle) * math.cos(angle))
-    above = swing_v**2 * (1 - 2 * angle / math.pi)
-    return math.sqrt(below + above)
+    return mean, below + kept_v**2 * (1 - 2 * angle / math.pi)
 
 
 def slewed_vrms(level_vrms: float, frequency_hz: float, slew_rate_v_per_s: float | None) -> float:

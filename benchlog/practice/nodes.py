@@ -62,6 +62,7 @@ class Netlist:
     _resistors: list[tuple[Node, Node, float]] = field(default_factory=list)
     _capacitors: list[tuple[Node, Node, float]] = field(default_factory=list)
     _amplifiers: list[_Placed] = field(default_factory=list)
+    _transformers: list[tuple[Node, Node, float]] = field(default_factory=list)
 
     def resistor(self, one: Node, other: Node, ohm: float) -> None:
         """Connect two nodes by a resistor."""
@@ -75,6 +76,15 @@ class Netlist:
         """Place an amplifier that draws no current and has no output resistance."""
         self._amplifiers.append(_Placed(plus, minus, out, amplifier))
 
+    def transformer(self, node: Node, *, of: Node, ratio: float) -> None:
+        """Force a node to a multiple of another, which it does not load."""
+        self._transformers.append((node, of, ratio))
+
+    @property
+    def amplifier_count(self) -> int:
+        """How many amplifiers were placed."""
+        return len(self._amplifiers)
+
     def solve(self, frequency_hz: FloatArray, *, from_amplifier: int | None = None) -> "Solution":
         """Solve for one volt of electromotive force, or one volt at an amplifier's input.
 
@@ -87,7 +97,7 @@ class Netlist:
             The voltage of every node, complex, for each frequency.
         """
         places = self._places()
-        forced = len(places) + 1 + len(self._amplifiers)
+        forced = len(places) + 1 + len(self._amplifiers) + len(self._transformers)
         matrix = np.zeros((frequency_hz.size, forced, forced), np.complex128)
         self._stamp_parts(matrix, places, (2j * np.pi * frequency_hz).astype(np.complex128))
         self._stamp_forced(matrix, places, frequency_hz)
@@ -104,6 +114,8 @@ class Netlist:
             named += [one, other]
         for placed in self._amplifiers:
             named += [placed.plus, placed.minus, placed.out]
+        for node, of, _ in self._transformers:
+            named += [node, of]
         names = dict.fromkeys(name for name in named if name != GROUND)
         return {name: place for place, name in enumerate(names)}
 
@@ -129,6 +141,10 @@ class Netlist:
                 if node != GROUND:
                     matrix[:, row, places[node]] += sign
             matrix[:, row, out] -= placed.amplifier.inverse_gain(frequency_hz)
+        for node, of, ratio in self._transformers:
+            row += 1
+            matrix[:, places[node], row] = matrix[:, row, places[node]] = 1.0
+            matrix[:, row, places[of]] -= ratio
 
 
 @dataclass(frozen=True, slots=True)

@@ -14,15 +14,15 @@ class StageKind:
 
     Attributes:
         topology: A word of the design file.
-        amplifier: Name of its amplifier.
+        amplifier: Name of its amplifier; None for a passive stage.
         legs: How many input legs a summing stage has.
-        driven: Which leg is driven: a number from 1 (summing), ``"plus"`` or ``"minus"``
-            (difference).
+        driven: Which leg is driven: a number from 1 (summing), ``"plus"``, ``"minus"`` or
+            ``"both"`` (difference).
         grounded: Whether the legs that are not driven are grounded; they hang open otherwise.
     """
 
     topology: str
-    amplifier: str
+    amplifier: str | None
     legs: int = 0
     driven: int | str = 1
     grounded: bool = True
@@ -86,22 +86,29 @@ class _Stage:
         return self.values.get(f"stage[{self.number}].{key}")
 
     def place_amplifier(self, plus: Node, minus: Node) -> None:
+        if self.kind.amplifier is None:
+            raise ValueError(f"stage {self.number} has no amplifier")
         amplifier = amplifier_values(self.values, self.kind.amplifier)
         self.net.op_amp(plus, minus, out=self.out, amplifier=amplifier)
 
     def feed_back(self, minus: Node) -> None:
+        """Close the loop, and load the minus input by its own capacitance."""
         self.net.resistor(minus, self.out, self.value("feedback"))
-        capacitor = self.optional("feedback_capacitor")
-        if capacitor is not None:
-            self.net.capacitor(minus, self.out, capacitor)
+        self.bypass(minus, self.out, "feedback_capacitor")
+        self.bypass(minus, GROUND, "input_capacitance")
 
-    def couple(self, node: Node) -> Node:
+    def bypass(self, one: Node, other: Node, key: str) -> None:
+        """Connect two nodes by a capacitor, where there is one."""
+        capacitor = self.optional(key)
+        if capacitor is not None:
+            self.net.capacitor(one, other, capacitor)
+
+    def couple(self, node: Node, leg: int = 1) -> Node:
         """Return the node behind the coupling capacitor, or the same where there is none."""
-        capacitor = self.optional("coupling")
-        if capacitor is None:
+        if self.optional("coupling") is None:
             return node
-        behind = self.node("coupled")
-        self.net.capacitor(node, behind, capacitor)
+        behind = self.node(f"coupled {leg}")
+        self.bypass(node, behind, "coupling")
         return behind
 
     def plus_input(self, node: Node) -> Node:
@@ -114,20 +121,21 @@ class _Stage:
 
 
 def _follower(stage: _Stage, node: Node) -> None:
-    stage.place_amplifier(stage.plus_input(node), stage.out)
+    minus = stage.out
+    if stage.optional("feedback") is not None:
+        minus = stage.node("minus")
+        stage.feed_back(minus)
+    stage.place_amplifier(stage.plus_input(node), minus)
 
 
 def _non_inverting(stage: _Stage, node: Node) -> None:
     minus = stage.node("minus")
     stage.place_amplifier(stage.plus_input(node), minus)
     stage.feed_back(minus)
-    capacitor = stage.optional("ground_capacitor")
-    if capacitor is None:
-        stage.net.resistor(minus, GROUND, stage.value("ground"))
-    else:
-        foot = stage.node("ground leg")
-        stage.net.resistor(minus, foot, stage.value("ground"))
-        stage.net.capacitor(foot, GROUND, capacitor)
+    shelved = stage.optional("ground_capacitor") is not None
+    foot = stage.node("ground leg") if shelved else GROUND
+    stage.net.resistor(minus, foot, stage.value("ground"))
+    stage.bypass(foot, GROUND, "ground_capacitor")
 
 
 def _inverting(stage: _Stage, node: Node) -> None:
@@ -142,26 +150,47 @@ def _summing(stage: _Stage, node: Node) -> None:
     for leg in range(1, stage.kind.legs + 1):
         ohm = stage.value(f"inputs[{leg}]")
         if leg == stage.kind.driven:
-            stage.net.resistor(stage.couple(node), minus, ohm)
+            stage.net.resistor(stage.couple(node, leg), minus, ohm)
         elif stage.kind.grounded:
-            stage.net.resistor(GROUND, minus, ohm)
+            ohm += stage.optional("undriven_source") or 0.0
+            stage.net.resistor(stage.couple(GROUND, leg), minus, ohm)
     stage.place_amplifier(GROUND, minus)
     stage.feed_back(minus)
 
 
 def _difference(stage: _Stage, node: Node) -> None:
     minus, plus = stage.node("minus"), stage.node("plus")
-    driven = stage.couple(node)
-    to_plus = stage.kind.driven == "plus"
-    stage.net.resistor(driven if to_plus else GROUND, plus, stage.value("plus_input"))
+    at_plus, at_minus = _difference_inputs(stage, node)
+    stage.net.resistor(at_plus, plus, stage.value("plus_input"))
     stage.net.resistor(plus, GROUND, stage.value("plus_ground"))
-    stage.net.resistor(GROUND if to_plus else driven, minus, stage.value("input"))
+    stage.bypass(plus, GROUND, "plus_ground_capacitor")
+    stage.net.resistor(at_minus, minus, stage.value("input"))
     stage.place_amplifier(plus, minus)
     stage.feed_back(minus)
 
 
+def _difference_inputs(stage: _Stage, node: Node) -> tuple[Node, Node]:
+    """Return what the plus and the minus leg hang on; both: half of the drive in opposite phase."""
+    if stage.kind.driven == "plus":
+        return node, GROUND
+    if stage.kind.driven == "minus":
+        return GROUND, node
+    halves = stage.node("upper half"), stage.node("lower half")
+    for half, ratio in zip(halves, (0.5, -0.5), strict=True):
+        stage.net.transformer(half, of=node, ratio=ratio)
+    return halves
+
+
 def _open_loop(stage: _Stage, node: Node) -> None:
-    stage.place_amplifier(stage.plus_input(node), GROUND)
+    stage.place_amplifier(node, GROUND)
+
+
+def _divider(stage: _Stage, node: Node) -> None:
+    stage.net.resistor(node, stage.out, stage.value("series"))
+    shunt = stage.optional("shunt")
+    if shunt is not None:
+        stage.net.resistor(stage.out, GROUND, shunt)
+    stage.bypass(stage.out, GROUND, "capacitor")
 
 
 _WIRINGS: dict[str, Callable[[_Stage, Node], None]] = {
@@ -171,4 +200,5 @@ _WIRINGS: dict[str, Callable[[_Stage, Node], None]] = {
     "summing": _summing,
     "difference": _difference,
     "open-loop": _open_loop,
+    "divider": _divider,
 }

@@ -17,6 +17,16 @@ def test_clipped_level_is_the_rms_of_the_clipped_wave(level_vrms: float) -> None
     assert clipped_vrms(level_vrms, 1.5) == pytest.approx(expected, rel=1e-8)
 
 
+@pytest.mark.parametrize(("above_v", "below_v"), [(1.5, 0.8), (0.8, 1.5), (1.5, 5.0)])
+def test_uneven_limits_and_the_mean_that_a_meter_does_not_see(
+    above_v: float, below_v: float
+) -> None:
+    """An AC meter reads the standard deviation of the wave, compared with its samples."""
+    phase = (np.arange(200_000) + 0.5) * 2 * np.pi / 200_000
+    wave = np.clip(2.0 * math.sqrt(2) * np.sin(phase), -below_v, above_v)
+    assert clipped_vrms(2.0, above_v, below_v) == pytest.approx(float(wave.std()), rel=1e-8)
+
+
 def test_no_limits_change_nothing() -> None:
     """A board without stated limits is linear."""
     assert clipped_vrms(1e3, None) == 1e3

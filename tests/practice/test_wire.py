@@ -1,0 +1,152 @@
+"""The practice instruments in the same process, with a clock that is a number."""
+
+import pytest
+
+from benchlog.errors import IdentityError, LinkLost, LinkRefused, LinkTimeout, Misuse
+from benchlog.practice.board import PracticeBoard
+from benchlog.practice.faults import Fault, FaultKind
+from benchlog.practice.wire import PracticeWire, PracticeWires, VirtualClock
+from benchlog.practice.world import World
+from tests.fakes.practice_boards import PREAMP
+
+
+def wire_with(*faults: Fault) -> PracticeWire:
+    """Return a wire to an output meter with faults."""
+    return PracticeWires(World(), faults={"output meter": faults}).open("output meter")
+
+
+def test_clock_moves_when_somebody_waits() -> None:
+    """And only then, and never backwards."""
+    clock = VirtualClock(5.0)
+    clock.wait(2.0)
+    clock.wait(-1.0)
+    assert clock.now_s() == 7.0
+
+
+def test_a_whole_measurement_takes_no_time() -> None:
+    """Source, board and two meters: gain is read out over in."""
+    wires = PracticeWires(World(PracticeBoard(PREAMP, spread=False), noise_rel=0.0))
+    source, output, before = (
+        wires.open(role) for role in ("source", "output meter", "input meter")
+    )
+    assert source.ask("OUTP:LOAD INF;:VOLT 20 MVPP;:FREQ 1 kHz;:OUTP ON;*OPC?", timeout_s=1) == "1"
+    wires.clock.wait(0.1)
+    gain = float(output.ask("READ?", timeout_s=1)) / float(before.ask("READ?", timeout_s=1))
+    assert gain == pytest.approx(48.0, rel=2e-3)
+    assert 0.1 < wires.clock.now_s() < 0.12
+
+
+def test_time_passes_while_the_instrument_is_busy() -> None:
+    """An answer is there when it is ready, not before."""
+    wires = PracticeWires(World())
+    meter = wires.open("output meter")
+    meter.ask("READ?", timeout_s=1)
+    assert wires.clock.now_s() == pytest.approx(2e-3)
+
+
+def test_board_put_down_now_has_to_settle() -> None:
+    """Who reads at once sees it."""
+    wires = PracticeWires(World(noise_rel=0.0))
+    source, meter = wires.open("source"), wires.open("output meter")
+    source.send("VOLT 1;:OUTP ON")
+    wires.clock.wait(1.0)
+    settled = meter.ask("READ?", timeout_s=1)
+    wires.put_board(None)
+    assert wires.world.board_label == "bypass"
+    assert meter.ask("READ?", timeout_s=1) != settled
+    wires.clock.wait(1.0)
+    assert meter.ask("READ?", timeout_s=1) == settled
+
+
+def test_setting_asked_for_an_answer_times_out() -> None:
+    """The wire is dirty after that, and clean again after recovery."""
+    wire = wire_with()
+    with pytest.raises(LinkTimeout, match=r"no answer to 'INIT' within 0\.5 s"):
+        wire.ask("INIT", timeout_s=0.5)
+    assert wire.dirty
+    for use in (lambda: wire.send("INIT"), lambda: wire.ask("READ?", timeout_s=1)):
+        with pytest.raises(Misuse, match="dirty"):
+            use()
+    wire.recover()
+    assert not wire.dirty
+    assert wire.ask("*OPC?", timeout_s=1) == "1"
+
+
+def test_closed_wire_is_closed() -> None:
+    """Twice is quiet; use is not."""
+    wire = wire_with()
+    wire.close()
+    wire.close()
+    for use in (wire.recover, lambda: wire.send("INIT")):
+        with pytest.raises(Misuse, match="closed"):
+            use()
+
+
+def test_late_answer_stays_for_the_next_reader() -> None:
+    """The trap of every stream: without recovery the next question gets the old answer."""
+    wire = wire_with(Fault(kind="late", delay_s=1.0))
+    with pytest.raises(LinkTimeout):
+        wire.ask("READ?", timeout_s=0.5)
+    wire.dirty = False
+    stale = wire.ask("*OPC?", timeout_s=1.0)
+    assert stale.endswith("E-06")
+    assert wire.ask("*TST?", timeout_s=1.0) == "1"
+
+
+def test_recovery_throws_the_late_answer_away() -> None:
+    """Whether it has arrived already or is still on its way."""
+    for delay_s in (0.55, 5.0):
+        wire = wire_with(Fault(kind="late", delay_s=delay_s))
+        with pytest.raises(LinkTimeout):
+            wire.ask("READ?", timeout_s=0.5)
+        wire.recover()
+        assert wire.ask("*OPC?", timeout_s=1.0) == "1"
+
+
+@pytest.mark.parametrize(
+    ("kind", "answer"),
+    [("split", "1"), ("stale", "0"), ("garbled", "\xce"), ("overloaded", "+9.900000E+37")],
+)
+def test_spoiled_answers(kind: FaultKind, answer: str) -> None:
+    """The second answer is spoiled; the first was ``0``."""
+    wire = wire_with(Fault(kind=kind, nth=2, delay_s=0.1))
+    assert wire.ask("*TST?", timeout_s=1.0) == "0"
+    assert wire.ask("*OPC?", timeout_s=1.0) == answer
+
+
+def test_dropped_connection_is_lost_and_comes_back() -> None:
+    """Once is repaired by opening anew."""
+    wire = wire_with(Fault(kind="closed"))
+    with pytest.raises(LinkLost):
+        wire.ask("READ?", timeout_s=1.0)
+    assert wire.dirty
+    wire.recover()
+    assert wire.ask("*OPC?", timeout_s=1.0) == "1"
+
+
+@pytest.mark.parametrize("kind", ["closed", "dropped"])
+def test_connection_that_stays_away_is_lost(kind: FaultKind) -> None:
+    """For good is for good."""
+    wire = wire_with(Fault(kind=kind, for_good=True))
+    with pytest.raises((LinkLost, LinkTimeout)):
+        wire.ask("READ?", timeout_s=1.0)
+    with pytest.raises(LinkLost, match="does not come back"):
+        wire.recover()
+    assert wire.dirty
+
+
+def test_other_instrument_is_noticed() -> None:
+    """Recovery compares who answers with who answered before."""
+    wire = wire_with()
+    wire.identity = "somebody,else,0,0"
+    with pytest.raises(IdentityError, match="another instrument answers"):
+        wire.recover()
+
+
+def test_wires_are_opened_by_address() -> None:
+    """An opener of real links can be replaced by this one."""
+    wires = PracticeWires(World())
+    wire = wires.open_wire(wires.addresses["source"], settings=None, timeout_s=2.0)
+    assert wire.identity.startswith("benchlog practice,sine source")
+    with pytest.raises(LinkRefused, match="no practice instrument"):
+        wires.open_wire("TCPIP::10.0.0.1::5025::SOCKET")
