@@ -23,9 +23,13 @@ def to_json(record: object, what: str) -> str:
         what: Its name, for the error.
 
     Raises:
-        LogbookError: A number in it is NaN.
+        LogbookError: A number in it is NaN, or a text is none.
     """
-    return msgspec.json.encode(_plain(msgspec.to_builtins(record), what)).decode()
+    plain = _plain(msgspec.to_builtins(record), what)
+    try:
+        return msgspec.json.encode(plain).decode()
+    except UnicodeEncodeError as error:
+        raise _not_text(what) from error
 
 
 def from_json(body: str, kind: type[T]) -> T:
@@ -52,11 +56,17 @@ def json_object(body: str, what: str) -> str:
     """
     try:
         msgspec.json.decode(body, type=dict[str, Any])
+    except UnicodeEncodeError as error:
+        raise _not_text(what) from error
     except msgspec.MsgspecError as error:
         raise LogbookError(
             f"the {what} are not a JSON object: {error}", where=what, expected='text like {"a": 1}'
         ) from error
     return body
+
+
+def _not_text(what: str) -> LogbookError:
+    return LogbookError(f"a text in the {what} holds bytes that are not text", where=what)
 
 
 def _plain(value: Any, what: str) -> Any:  # noqa: ANN401 - any JSON value

@@ -5,9 +5,8 @@ from typing import Literal, TypeAlias
 Version: TypeAlias = tuple[int, int, int]
 
 # Source: sqlite.org/wal.html, the WAL-reset bug: 3.7.0 to 3.51.2, mended in 3.51.3 and carried back
-# to these two series.
-_FIRST_AFFECTED: Version = (3, 7, 0)
-_FIRST_MENDED: Version = (3, 51, 3)
+# to two older series.
+_MENDED_FROM: Version = (3, 51, 3)
 _MENDED_SERIES = {(3, 50): 7, (3, 44): 6}
 
 
@@ -23,12 +22,9 @@ def wal_is_sound(version: Version) -> bool:
     Source:
         sqlite.org/wal.html, the WAL-reset bug.
     """
-    if version < _FIRST_AFFECTED:
-        return False  # has no write-ahead log at all
-    if version >= _FIRST_MENDED:
-        return True
-    mended_from = _MENDED_SERIES.get(version[:2])
-    return mended_from is not None and version[2] >= mended_from
+    carried_back_from = _MENDED_SERIES.get(version[:2])
+    carried_back = carried_back_from is not None and version[2] >= carried_back_from
+    return carried_back or version >= _MENDED_FROM
 
 
 def journal_mode(version: Version) -> Literal["wal", "delete"]:

@@ -54,6 +54,8 @@ def said_plainly(path: Path) -> Iterator[None]:
         yield
     except sqlite3.Error as error:
         raise refusal(error, path) from error
+    except UnicodeDecodeError as error:  # SQLite's own message quotes bytes of the damaged file
+        raise damaged(f"it holds bytes that are not text ({error})").at(str(path)) from error
 
 
 def refusal(error: sqlite3.Error, path: Path) -> LogbookError:

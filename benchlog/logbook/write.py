@@ -63,9 +63,9 @@ def sweep_id(connection: sqlite3.Connection, uuid: str) -> int:
     return int(row[0])
 
 
-def document(connection: sqlite3.Connection, body: str) -> int:
+def document(connection: sqlite3.Connection, body: str, what: str) -> int:
     """Return the row of a text, writing it if it is new."""
-    sha256 = door.sha256_of(body)
+    sha256 = door.sha256_of(door.text(body, what))
     found = connection.execute(
         f"SELECT id FROM {names.DOCUMENT} WHERE sha256 = ?", (sha256,)
     ).fetchone()
@@ -97,7 +97,12 @@ def design(
         connection,
         f"INSERT INTO {names.DESIGN} (sha256, name, revision, body) VALUES (?, ?, ?, ?)"
         " RETURNING id",
-        (sha256, door.text(name, "design name"), door.text(revision, "revision"), text),
+        (
+            sha256,
+            door.text(name, "design name"),
+            door.text(revision, "revision"),
+            door.text(text, "design"),
+        ),
     )
 
 
@@ -117,8 +122,8 @@ def begin_sweep(connection: sqlite3.Connection, start: SweepStart, design_id: in
         door.text(start.lot, "lot"),
         door.text(start.reason, "reason"),
         door.text(start.note, "note"),
-        document(connection, json_object(start.settings, "settings")),
-        document(connection, to_json(start.terms, "type B terms")),
+        document(connection, json_object(start.settings, "settings"), "settings"),
+        document(connection, to_json(start.terms, "type B terms"), "type B terms"),
         start.capture_sha256,
     )
     sweep = _insert(connection, _INSERT_SWEEP, row)
@@ -203,9 +208,9 @@ def add_figures(
         names.THIS_LOGBOOK,
         _next(connection, _LAST_FIGURES, sweep),
         door.utc_now(),
-        figures.method,
-        figures.shape,
-        document(connection, json_object(settings, "extraction settings")),
+        door.text(figures.method, "method"),
+        door.text(figures.shape, "shape"),
+        document(connection, json_object(settings, "extraction settings"), "settings"),
         to_json(figures, "figures"),
         *_figure_values(figures),
     )
@@ -228,7 +233,7 @@ def add_verdict(
         door.utc_now(),
         verdict.overall,
         design_id,
-        document(connection, door.text(budget, "budget")),
+        document(connection, budget, "budget"),
         to_json(verdict, "verdict"),
     )
     return _insert(connection, _INSERT_VERDICT, row)

@@ -7,8 +7,9 @@ import pytest
 
 from benchlog.errors import LogbookError
 from benchlog.logbook import door
+from benchlog.logbook.codec import to_json
 from benchlog.logbook.store import Logbook
-from benchlog.records import Point, PointFlag
+from benchlog.records import Figures, Point, PointFlag
 from tests.fakes.sample_sweep import sample_points, sample_start
 
 
@@ -58,6 +59,10 @@ def test_bytes_that_are_no_text_are_refused(logbook: Logbook) -> None:
     """A command line can carry bytes that are not UTF-8."""
     with pytest.raises(LogbookError, match=r"serial holds bytes that are not text: '\\udcff'"):
         logbook.begin_sweep(sample_start("\udcff"))
+    with pytest.raises(LogbookError, match="the settings holds bytes that are not text"):
+        logbook.begin_sweep(sample_start(settings='{"a": "\udcff"}'))
+    with pytest.raises(LogbookError, match="the figures holds bytes that are not text"):
+        to_json(Figures(shape="\udcff"), "figures")
 
 
 @pytest.mark.parametrize("serial", ["0042", "1E05", "NA", "' OR 1=1 --", "Ω\n\t\0", "0" * 300])

@@ -9,6 +9,7 @@ from benchlog.errors import LogbookError, Misuse
 from benchlog.logbook import names
 from benchlog.logbook.store import Logbook
 from benchlog.records import PointFlag
+from tests.fakes.failing_connection import ImpatientConnection
 from tests.fakes.sample_sweep import (
     DESIGN_SHA256,
     DESIGN_TEXT,
@@ -159,6 +160,15 @@ def test_together_keeps_all_or_nothing(logbook: Logbook) -> None:
     with logbook.together(), pytest.raises(Misuse, match="already grouped"):
         logbook.together().__enter__()
     logbook.begin_sweep(sample_start())
+
+
+def test_a_transaction_holds_the_file_from_its_beginning(logbook: Logbook) -> None:
+    """A lock taken only at the first write could be refused at once, without waiting."""
+    start = sample_start()
+    with Logbook(logbook.path, factory=ImpatientConnection) as other:
+        with logbook.together(), pytest.raises(LogbookError, match="in use by another program"):
+            other.begin_sweep(start)
+        other.begin_sweep(start)
 
 
 def test_the_curve_carries_what_extraction_must_know(logbook: Logbook) -> None:
