@@ -84,7 +84,7 @@ def design(
     """Return the row of a design, writing it if it is new.
 
     Raises:
-        LogbookError: The design is new and its text was not given.
+        LogbookError: The design is new and its text was not given, or is another text.
     """
     found = connection.execute(
         f"SELECT id FROM {names.DESIGN} WHERE sha256 = ?", (sha256,)
@@ -93,6 +93,11 @@ def design(
         return int(found[0])
     if text is None:
         raise LogbookError(f"the logbook has no design {sha256}, and its text was not given")
+    if door.sha256_of(door.text(text, "design")) != sha256:
+        raise LogbookError(
+            f"the text given for design {name!r} is not the one that its SHA-256 names",
+            expected="the whole file as it was read",
+        )
     return _insert(
         connection,
         f"INSERT INTO {names.DESIGN} (sha256, name, revision, body) VALUES (?, ?, ?, ?)"
@@ -101,7 +106,7 @@ def design(
             sha256,
             door.text(name, "design name"),
             door.text(revision, "revision"),
-            door.text(text, "design"),
+            text,
         ),
     )
 

@@ -70,6 +70,14 @@ def test_a_design_is_known_by_its_hash_afterwards(logbook: Logbook) -> None:
     assert logbook.design("0" * 64) is None
 
 
+def test_a_design_is_kept_only_under_its_own_hash(logbook: Logbook) -> None:
+    """A verdict must never point at limits other than those it was given on."""
+    start = sample_start(design_sha256=DESIGN_SHA256)
+    with pytest.raises(LogbookError, match="'preamp' is not the one that its SHA-256 names"):
+        logbook.begin_sweep(start, design_text=DESIGN_TEXT + "\n", design_name="preamp")
+    assert logbook.info().designs == 0
+
+
 def test_a_design_text_without_a_design_is_misuse(logbook: Logbook) -> None:
     """A text that no hash names would be lost."""
     with pytest.raises(Misuse, match="names no design"):
