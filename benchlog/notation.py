@@ -1,13 +1,14 @@
 """Write numbers for people: rounded to their uncertainty, with prefixes, in plain ASCII."""
 
 import math
+from typing import SupportsFloat
 
 # Units that a prefix would make unreadable: nobody says millidecibel.
 _UNPREFIXED = frozenset({"", "dB", "V/V", "%", "deg"})
 _PREFIXES = {-12: "p", -9: "n", -6: "u", -3: "m", 0: "", 3: "k", 6: "M", 9: "G", 12: "T"}
 
 
-def with_uncertainty(value: float, u: float | None, unit: str) -> str:
+def with_uncertainty(value: SupportsFloat, u: SupportsFloat | None, unit: str) -> str:
     """Write a value rounded to two significant digits of its standard uncertainty.
 
     Args:
@@ -23,9 +24,9 @@ def with_uncertainty(value: float, u: float | None, unit: str) -> str:
         JCGM 100:2008, 7.2.2 (form) and 7.2.6 (at most two significant digits of u).
     """
     value = float(value)
-    if u is None or u == 0 or not math.isfinite(value):
+    u = 0.0 if u is None else abs(float(u))
+    if u == 0 or not math.isfinite(value):
         return si(value, unit)
-    u = abs(float(u))
     if not math.isfinite(u):
         return f"{si(value, unit)} (uncertainty not known)"
     place = _place_of_second_digit(u)
@@ -40,7 +41,7 @@ def with_uncertainty(value: float, u: float | None, unit: str) -> str:
     return _joined(f"{_no_minus_zero(rounded, decimals)}({bracket})", exponent, unit)
 
 
-def si(value: float, unit: str, digits: int = 4) -> str:
+def si(value: SupportsFloat, unit: str, digits: int = 4) -> str:
     """Write a value with a prefix and at most ``digits`` significant digits: ``"47 kohm"``."""
     value = float(value)
     if math.isnan(value):
@@ -51,7 +52,7 @@ def si(value: float, unit: str, digits: int = 4) -> str:
     return _joined(plain(value / 10.0**exponent, digits), exponent, unit)
 
 
-def plain(value: float, digits: int = 4) -> str:
+def plain(value: SupportsFloat, digits: int = 4) -> str:
     """Write a number without prefix, with at most ``digits`` significant digits: ``"46.2"``.
 
     Digits left of the point are never dropped; powers of ten are used only past 15 places.

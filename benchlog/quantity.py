@@ -7,11 +7,12 @@ decimal comma.  Every parser refuses with the field's name and an example.
 
 import math
 import re
+import sys
 from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import TypeAlias
 
-from quantiphy import Quantity
+from quantiphy import QuantiPhyError, Quantity
 
 from benchlog.errors import QuantityError
 from benchlog.notation import ratio_from_decibels
@@ -19,8 +20,10 @@ from benchlog.notation import ratio_from_decibels
 Entry: TypeAlias = str | int | float
 
 _LONGEST = 40
+_LARGEST = sys.float_info.max
 _NUMBER = re.compile(r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]+)?")
 _PART_CODE = re.compile(r"([+-]?[0-9]*)([RrFkKMGTmuµnp])([0-9]+)([A-Za-z/]*)")
+_UNIT = re.compile(r"[A-Za-zµ%/]*")
 _COMMA = re.compile(r"[0-9],[0-9]")
 _ALIKE = str.maketrans(
     {"\u00a0": " ", "\u202f": " ", "−": "-", "\u2126": "ohm", "Ω": "ohm", "μ": "µ"}
@@ -229,15 +232,21 @@ class _Wanted:
     kind: Kind
 
     def refusal(self, why: str, *, hint: str | None = None) -> QuantityError:
-        shown = repr(self.entry)
-        if len(shown) > _LONGEST + 2:
-            shown = f"{shown[:_LONGEST]}..."
+        shown = _shown(self.entry)
         return QuantityError(
             f"{self.field}: {shown} {why}",
             where=self.field,
             expected=f'{self.kind.noun}, for example "{self.kind.example}"',
             hint=hint,
         )
+
+
+def _shown(entry: object) -> str:
+    """Return an entry as a message shows it, cut where it is long."""
+    if isinstance(entry, int) and abs(entry) > 10**_LONGEST:
+        return "a number too large to write"
+    shown = repr(entry)
+    return shown if len(shown) <= _LONGEST + 2 else f"{shown[:_LONGEST]}..."
 
 
 def _read(entry: Entry, field: str, kind: Kind) -> float:
@@ -247,8 +256,7 @@ def _read(entry: Entry, field: str, kind: Kind) -> float:
     if prefix_unit in {"%", "ppm"}:
         value, unit = float(number), prefix_unit
     else:
-        quantity = _Scaled(f"{number} {prefix_unit}".strip())
-        value, unit = float(quantity), str(quantity.units).lower()
+        value, unit = _scaled(number, prefix_unit, wanted)
     value *= _factor(unit, wanted)
     if not kind.small and prefix_unit.lower() != unit and prefix_unit[0] in "mµunp":
         slip = f"did you mean {number} M{prefix_unit[1:]}?" if prefix_unit[0] == "m" else None
@@ -264,7 +272,7 @@ def _as_text(wanted: _Wanted) -> str:
     if isinstance(entry, bool) or not isinstance(entry, str | int | float):
         raise wanted.refusal("is no quantity")
     if not isinstance(entry, str):
-        if not math.isfinite(entry):
+        if not abs(entry) <= _LARGEST:
             raise wanted.refusal("is not a finite number")
         return f"{float(entry)!r}"
     text = " ".join(entry.translate(_ALIKE).split())
@@ -290,7 +298,18 @@ def _split(text: str, wanted: _Wanted) -> tuple[str, str]:
     found = _NUMBER.match(packed)
     if not found:
         raise wanted.refusal("does not begin with a number")
+    if not _UNIT.fullmatch(packed, found.end()):
+        raise wanted.refusal("has an unknown unit")
     return found.group(), packed[found.end() :]
+
+
+def _scaled(number: str, prefix_unit: str, wanted: _Wanted) -> tuple[float, str]:
+    """Apply the prefix; return the value and its unit in lower case."""
+    try:
+        quantity = _Scaled(f"{number} {prefix_unit}".strip())
+    except QuantiPhyError as error:
+        raise wanted.refusal("has an unknown unit") from error
+    return float(quantity), str(quantity.units).lower()
 
 
 def _unit_of(entry: Entry) -> str:
@@ -314,7 +333,7 @@ def _factor(unit: str, wanted: _Wanted) -> float:
         raise wanted.refusal("does not say whether it is RMS, peak or peak to peak", hint=hint)
     if unit in _TOLD:
         raise wanted.refusal(f"is {_TOLD[unit]}, not {kind.noun}")
-    raise wanted.refusal(f"has the unit {unit!r}, which is not known here")
+    raise wanted.refusal("has an unknown unit")
 
 
 def _why_impossible(value: float, kind: Kind) -> str:

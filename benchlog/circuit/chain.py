@@ -16,6 +16,7 @@ from benchlog.circuit.parts import (
     without_capacitors,
 )
 from benchlog.circuit.stage import Stage, output_impedance, stage_response
+from benchlog.circuit.topologies import Divider
 from benchlog.curve import ComplexArray, FloatArray
 from benchlog.errors import Misuse
 
@@ -30,11 +31,26 @@ class Chain:
         stages: Each topology with the amplifier in it; None for a passive stage.
         figure_amplifier: Name of the amplifier whose GBW is the figure; the first one if None.
         tolerances: Part name to relative tolerance, for ``parts()``.
+
+    Raises:
+        Misuse: No stage, an amplifier missing or too many, or two amplifiers of one name.
     """
 
     stages: tuple[tuple[Stage, Amplifier | None], ...]
     figure_amplifier: str | None = field(default=None, kw_only=True)
     tolerances: Mapping[str, float] = field(default_factory=dict, kw_only=True)
+
+    def __post_init__(self) -> None:
+        if not self.stages:
+            raise Misuse("a chain needs a stage")
+        known: dict[str, Amplifier] = {}
+        for stage, amplifier in self.stages:
+            if (amplifier is None) is not isinstance(stage, Divider):
+                raise Misuse("every stage but a divider has an amplifier")
+            if amplifier is not None and known.setdefault(amplifier.name, amplifier) != amplifier:
+                raise Misuse(f"two different amplifiers are called {amplifier.name!r}")
+        if self.figure_amplifier is not None and self.figure_amplifier not in known:
+            raise Misuse(f"no amplifier is called {self.figure_amplifier!r}")
 
     def response(
         self,
@@ -86,15 +102,25 @@ class Chain:
 
     @property
     def gbw_hz(self) -> float:
-        """Typical GBW of the amplifier whose GBW is the figure."""
-        amplifier = self.stages[self.figure_stages[0] - 1][1]
-        if amplifier is None:
-            raise Misuse("a figure stage has no amplifier")
-        return float(amplifier.gbw_hz)
+        """Typical GBW of the amplifier whose GBW is the figure.
+
+        Raises:
+            Misuse: The chain is passive.
+        """
+        for amplifier in self.amplifiers():
+            if amplifier.name == self._figure_name:
+                return float(amplifier.gbw_hz)
+        raise Misuse("a passive chain has no GBW")
 
     @property
     def noise_gain(self) -> float:
-        """Mid-band noise gain where the GBW is the figure; the largest if there are several."""
+        """Mid-band noise gain where the GBW is the figure; the largest if there are several.
+
+        Raises:
+            Misuse: The chain is passive.
+        """
+        if not self.figure_stages:
+            raise Misuse("a passive chain has no noise gain")
         at_rest = np.zeros(1, complex)
         flat = [without_capacitors(self.stages[place - 1][0]) for place in self.figure_stages]
         return max(float(np.abs(stage.noise_gain(at_rest, 0.0))) for stage in flat)
