@@ -114,6 +114,7 @@ def test_which_troubles_are_measured_again(error: InstrumentError, *, retriable:
         assert result.recoveries == (Recovery(position=2, attempt=1, why=why),)
         assert [point.attempts for point in result.points][:4] == [1, 1, 2, 1]
         assert result.error is None
+        assert bench.calls.count("source.recover") == 1
     else:
         assert (result.state, result.why) == ("failed", why)
         assert result.error is error
@@ -325,6 +326,16 @@ class TestStop:
         assert result.state == "complete"
         assert result.source_off
         assert bench.calls[-3:] == ["source.switch_off", "source.recover", "source.switch_off"]
+
+    def test_interrupts_for_good_do_not_keep_the_program_from_ending(self) -> None:
+        """Who presses at every try gets out, told that the source is still on."""
+        failure = Failure(nth=1, for_good=True, only="source.switch_off", error=KeyboardInterrupt)
+        bench = FakeBench(failure=failure)
+
+        result = sweep(bench)
+
+        assert (result.state, result.source_off) == ("complete", False)
+        assert bench.calls.count("source.switch_off") == 3
 
     def test_an_interrupt_in_keep(self) -> None:
         """Whether or not the point became durable, the sweep ends as stopped and off."""

@@ -22,6 +22,11 @@ def test_whole_decades_hit_round_numbers() -> None:
     assert frequencies == (*expected, 1e6)
 
 
+def test_coarse_spacing_keeps_four_digits() -> None:
+    """Few points a decade do not make them rougher."""
+    assert log_spaced(10.0, 1e3, 2) == (10.0, 31.62, 100.0, 316.2, 1e3)
+
+
 def test_twenty_decades_do_not_drift() -> None:
     """The hundredth frequency is as round as the first."""
     assert log_spaced(1e-5, 1e15, 5)[95] == 1e14
