@@ -24,6 +24,7 @@ _NUMBER = re.compile(
     r"(?:\s*(?P<suffix>[A-Za-z/][A-Za-z0-9/.\-^]*))?"
 )
 _WORD = re.compile(r"[A-Za-z]\w*")
+_UP_TO_SEPARATOR = re.compile(r"[\s,]")
 _STRING = re.compile(r"\"((?:[^\"]|\"\")*)\"|'((?:[^']|'')*)'")
 _COUNTED = re.compile(r"#(?:[Hh](?P<hex>[0-9A-Fa-f]+)|[Qq](?P<oct>[0-7]+)|[Bb](?P<bin>[01]+))")
 _EXPRESSION = re.compile(r"\([^()\"']*\)")
@@ -169,15 +170,12 @@ def _number(text: str) -> tuple[Element, int]:
 
 
 def _word(text: str) -> tuple[Element, int]:
-    match = _WORD.match(text)
-    if match is None:
+    word = _UP_TO_SEPARATOR.split(text, maxsplit=1)[0]
+    if not _WORD.fullmatch(word):
         raise ScpiError(-141)
-    end = match.end()
-    if end < len(text) and not text[end].isspace() and text[end] != ",":
-        raise ScpiError(-141)
-    if end > LONGEST_WORD:
+    if len(word) > LONGEST_WORD:
         raise ScpiError(-144)
-    return Element(kind="word", text=match[0].upper()), end
+    return Element(kind="word", text=word.upper()), len(word)
 
 
 def _counted(text: str) -> tuple[Element, int]:

@@ -45,7 +45,7 @@ FLOOR_PER_RANGE = 1e-5
 """The meter's own noise, added in quadrature: a fixed part and a part of the range."""
 
 RANGE = Limits(minimum=0.0, maximum=RANGES_V[-1] * OVERRANGE, default=RANGES_V[0])
-FILTER = Limits(minimum=min(FILTER_SETTLE_S), maximum=300e3, default=20.0)
+FILTER = Limits(minimum=min(FILTER_SETTLE_S), maximum=BANDWIDTH_HZ, default=20.0)
 
 
 def settle_s(filter_hz: float, frequency_hz: float) -> float:

@@ -151,8 +151,8 @@ class Instrument:
 
     def _run(self, command: Command, unit: Unit, moment: Moment) -> None:
         """Execute one unit; an execution error is reported and the message goes on."""
-        values = read_parameters(command.parameters, unit.elements, required=command.required)
         try:
+            values = read_parameters(command.parameters, unit.elements, required=command.required)
             response = command.run(self.device, moment, values)
         except ScpiError as error:
             if error.ends_message:

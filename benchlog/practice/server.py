@@ -33,6 +33,15 @@ class Addresses(NamedTuple):
     input_meter: str
 
 
+@dataclass(frozen=True, slots=True)
+class _Running:
+    """A server that serves: where, in which thread, and what to close to end it."""
+
+    addresses: Addresses
+    thread: Thread
+    stop: socket.socket
+
+
 @dataclass(slots=True)
 class _Station:
     """One instrument on its port, with the messages that wait for it."""
@@ -80,8 +89,7 @@ class PracticeServer:
         self._host = host
         self._ports = ports
         self._faults = dict(faults or {})
-        self._thread: Thread | None = None
-        self._addresses: Addresses | None = None
+        self._running: _Running | None = None
 
     @property
     def addresses(self) -> Addresses:
@@ -90,9 +98,9 @@ class PracticeServer:
         Raises:
             Misuse: The server does not run.
         """
-        if self._addresses is None:
+        if self._running is None:
             raise Misuse("the practice server does not run")
-        return self._addresses
+        return self._running.addresses
 
     def put_board(self, board: Board | None) -> None:
         """Put a board on the table; None bypasses it."""
@@ -106,7 +114,7 @@ class PracticeServer:
         except (InstrumentError, Misuse):
             _close_all(listeners)
             raise
-        self._addresses = Addresses(
+        addresses = Addresses(
             *(f"TCPIP::{self._host}::{made.getsockname()[1]}::SOCKET" for made in listeners)
         )
         instruments = make_instruments(self.world)
@@ -114,10 +122,10 @@ class PracticeServer:
             _Station(instruments[role], Unkindness(self._faults.get(role, ())), listener)
             for role, listener in zip(ROLES, listeners, strict=True)
         ]
-        self._stop, wake = socket.socketpair()
-        loop = _Loop(stations, wake)
-        self._thread = Thread(target=loop.run, name="practice bench", daemon=True)
-        self._thread.start()
+        stop, wake = socket.socketpair()
+        thread = Thread(target=_Loop(stations, wake).run, name="practice bench", daemon=True)
+        thread.start()
+        self._running = _Running(addresses, thread, stop)
         return self
 
     def __exit__(
@@ -126,10 +134,11 @@ class PracticeServer:
         error: BaseException | None,
         trace: TracebackType | None,
     ) -> None:
-        self._addresses = None
-        self._stop.close()
-        if self._thread is not None:
-            self._thread.join()
+        if self._running is None:
+            return
+        running, self._running = self._running, None
+        running.stop.close()
+        running.thread.join()
 
 
 class _Loop:

@@ -6,7 +6,6 @@ from dataclasses import dataclass, replace
 from functools import cache
 
 from benchlog.practice.common import COMMON_COMMANDS
-from benchlog.practice.error_table import ScpiError
 from benchlog.practice.parameters import (
     INFINITY,
     Boolean,
@@ -144,9 +143,8 @@ def _load(source: Source, _moment: Moment, values: Sequence[Value]) -> str:
     return nr3(INFINITY if math.isinf(load_ohm) else load_ohm)
 
 
-def _set_shape(_source: Source, _moment: Moment, values: Sequence[Value]) -> None:
-    if values[0] != "SIN":
-        raise ScpiError(-224)
+def _set_shape(_source: Source, _moment: Moment, _values: Sequence[Value]) -> None:
+    """A sine is all this source can make; the word was checked when it was read."""
 
 
 def _shape(_source: Source, _moment: Moment, _values: Sequence[Value]) -> str:

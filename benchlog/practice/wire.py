@@ -10,7 +10,7 @@ from collections.abc import Iterable, Mapping
 from benchlog.errors import IdentityError, LinkLost, LinkRefused, LinkTimeout, Misuse
 from benchlog.practice.bench import Role, make_instruments
 from benchlog.practice.faults import Fault, Unkindness
-from benchlog.practice.scpi import Instrument
+from benchlog.practice.scpi import Instrument, Response
 from benchlog.practice.world import Board, World
 
 DRAIN_S = 0.1
@@ -57,6 +57,7 @@ class PracticeWire:
         self._unkindness = Unkindness(faults)
         self._arriving: deque[tuple[float, bytes | None]] = deque()
         self._open = True
+        self._busy_until_s = float("-inf")
 
     def send(self, message: str) -> None:
         """Send a program message that has no response.
@@ -68,7 +69,7 @@ class PracticeWire:
         self._transmit(message)
 
     def ask(self, message: str, *, timeout_s: float) -> str:
-        """Send a query and return its response without terminator.
+        """Send a message whose last line is a query; return the response without terminator.
 
         Raises:
             LinkTimeout: No response in time; the wire is dirty now.
@@ -121,9 +122,15 @@ class PracticeWire:
             raise Misuse(f"the wire to {self.address} is dirty; recover it first")
 
     def _transmit(self, message: str) -> None:
-        response = self._instrument.handle(message, self._clock.now_s())
-        if response is None:
-            return
+        """Let the instrument execute each line as soon as it is done with the one before."""
+        for line in message.split("\n"):
+            self._busy_until_s = max(self._busy_until_s, self._clock.now_s())
+            response = self._instrument.handle(line, self._busy_until_s)
+            if response is not None:
+                self._busy_until_s = response.ready_at_s
+                self._answer(response)
+
+    def _answer(self, response: Response) -> None:
         due_s = response.ready_at_s
         if self._arriving:
             due_s = max(due_s, self._arriving[-1][0])

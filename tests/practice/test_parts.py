@@ -13,7 +13,8 @@ from benchlog.design.example import EXAMPLE_DESIGN
 from benchlog.design.model import Design
 from benchlog.design.read import parse_design
 from benchlog.practice.board import PracticeBoard
-from benchlog.practice.parts import parts_list
+from benchlog.practice.parts import PartsList, parts_list
+from benchlog.practice.wiring import StageKind
 
 FREQUENCY_HZ: FloatArray = np.geomspace(1.0, 3e7, 61)
 
@@ -90,6 +91,23 @@ def test_chain_with_a_passive_stage_agrees_with_its_design() -> None:
     expected = made.chain().response(FREQUENCY_HZ)
     np.testing.assert_allclose(board.gain(FREQUENCY_HZ), expected, rtol=1e-9)
     assert board.levels(1e3, 0.1, source_ohm=50).noise_vrms > 0
+
+
+def test_low_pass_without_a_shunt_agrees_with_its_design() -> None:
+    """A divider may be a capacitor alone."""
+    divider = '[[stage]]\ntopology = "divider"\nseries = "1k"\ncapacitor = "1n"'
+    made = design("\n".join((divider, placed("inverting"))))
+    expected = made.chain().response(FREQUENCY_HZ)
+    np.testing.assert_allclose(
+        PracticeBoard(made, spread=False).gain(FREQUENCY_HZ), expected, rtol=1e-9
+    )
+
+
+def test_active_stage_without_an_amplifier_is_refused() -> None:
+    """A parts list made by hand can be wrong."""
+    kind = StageKind(topology="follower", amplifier=None)
+    with pytest.raises(ValueError, match="stage 1 has no amplifier"):
+        PracticeBoard(PartsList(kinds=(kind,), parts={})).gain(FREQUENCY_HZ)
 
 
 def test_open_loop_agrees_with_its_design() -> None:

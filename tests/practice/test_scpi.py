@@ -86,6 +86,12 @@ def test_execution_error_goes_on_with_the_message(source: Instrument) -> None:
     assert errors(source) == [-222]
 
 
+def test_execution_error_found_while_reading_goes_on_too(meter: Instrument) -> None:
+    """What counts is the class of the number, not where it was found."""
+    assert answer(meter, "FUNC 'CURR';:VOLT:AC:BAND 3;BAND?") == "+3.000000E+00"
+    assert errors(meter) == [-224]
+
+
 def test_nothing_can_be_asked_after_an_indefinite_response(source: Instrument) -> None:
     """``*IDN?`` has to be the last query of a message: -440."""
     identity = answer(source, "*IDN?")

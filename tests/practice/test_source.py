@@ -125,6 +125,15 @@ def test_refused_settings(source: Instrument, world: World, message: str, number
     assert world.drive == before
 
 
+@pytest.mark.parametrize(
+    ("word", "emf_vpp"), [("MIN", 2e-3), ("MAX", 20.0), ("DEF", 0.2), ("MAXIMUM", 20.0)]
+)
+def test_level_by_word(source: Instrument, world: World, word: str, emf_vpp: float) -> None:
+    """The ends of the range can be named."""
+    answer(source, f"VOLT {word}")
+    assert world.drive.emf_vrms == pytest.approx(emf_vpp / math.sqrt(8))
+
+
 def test_largest_level_is_20_vpp_open(source: Instrument, world: World) -> None:
     """10 Vpp shown for 50 ohm is the end of the range, in whatever unit."""
     answer(source, "VOLT 10 VPP")

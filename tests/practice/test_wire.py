@@ -82,6 +82,28 @@ def test_closed_wire_is_closed() -> None:
             use()
 
 
+def test_lines_are_messages_of_their_own() -> None:
+    """One transmission may carry several; each waits until the one before is done."""
+    wires = PracticeWires(World())
+    meter = wires.open("output meter")
+    assert meter.ask("VOLT:AC:BAND 200\nREAD?", timeout_s=1).endswith("E-06")
+    meter.send("INIT\n*IDN?\nVOLT:AC:RANG 10")
+    assert meter.ask("VOLT:AC:RANG?", timeout_s=1) == meter.identity
+    assert meter.ask("SYST:ERR?", timeout_s=1) == "+1.000000E+01"
+
+
+def test_message_after_a_timeout_waits_for_the_instrument() -> None:
+    """A reading under way is finished first, as on a socket."""
+    wires = PracticeWires(World())
+    meter = wires.open("output meter")
+    with pytest.raises(LinkTimeout):
+        meter.ask("VOLT:AC:BAND 3;:READ?", timeout_s=0.01)
+    meter.dirty = False
+    meter.ask("*OPC?", timeout_s=1)
+    assert meter.ask("*TST?", timeout_s=1) == "1"
+    assert wires.clock.now_s() == pytest.approx(0.252)
+
+
 def test_late_answer_stays_for_the_next_reader() -> None:
     """The trap of every stream: without recovery the next question gets the old answer."""
     wire = wire_with(Fault(kind="late", delay_s=1.0))
