@@ -113,16 +113,15 @@ _CONDITION = {
     "verdict": "v.overall = ?",
     "since": "s.started_at >= ?",
     "until": "s.started_at < ?",
-    "lot": "s.lot = ?",
+    "lot": "s.lot = ? AND s.lot <> ''",  # the second half lets the index of lots be used
     "operator": "s.operator = ?",
     "design": f"""s.design IN (
         SELECT id FROM {names.DESIGN}, (SELECT ? AS asked)
         WHERE name = asked
         OR (length(asked) >= 6 AND substr(sha256, 1, length(asked)) = lower(asked)))""",
     "instrument": f"""s.id IN (
-        SELECT used.sweep FROM {names.INSTRUMENT} i
-        JOIN {names.SWEEP_INSTRUMENT} used ON used.instrument = i.id
-        WHERE instr(lower(i.identity), lower(?)) > 0)""",
+        SELECT sweep FROM {names.SWEEP_INSTRUMENT} WHERE instrument IN (
+            SELECT id FROM {names.INSTRUMENT} WHERE instr(lower(identity), lower(?)) > 0))""",
 }
 
 # How a filter's value is read; all others are plain text.
