@@ -26,36 +26,26 @@ RANGES_V = (0.1, 1.0, 10.0, 100.0, 700.0)
 OVERRANGE = 1.2
 """A range reads up to this multiple of its name (common practice)."""
 
-FILTER_SETTLE_S = {3.0: 0.25, 20.0: 0.03, 200.0: 0.003}
+FILTER_SETTLE_S = {1.0: 0.4, 10.0: 0.012, 200.0: 0.003}
 """Low-frequency filter, named by the lowest frequency it is good for -> its settling time."""
 
-SETTLE_CYCLES = 5
-APERTURE_S = 2e-3
-APERTURE_CYCLES = 1
-RANGE_CHANGE_S = 4e-3
+SETTLE_CYCLES = 2.5
+"""Periods of the signal that settling takes beyond that."""
 
-BANDWIDTH_HZ = 10e6
-"""The meter's own pole; each meter's lies within 2 % of it."""
-
-GAIN_ERROR_REL = 5e-4
-"""Each meter's gain lies within this of true."""
+READING_S = 4e-3
+RANGE_CHANGE_S = 2e-3
 
 FLOOR_V = 2e-6
 FLOOR_PER_RANGE = 1e-5
 """The meter's own noise, added in quadrature: a fixed part and a part of the range."""
 
 RANGE = Limits(minimum=0.0, maximum=RANGES_V[-1] * OVERRANGE, default=RANGES_V[0])
-FILTER = Limits(minimum=min(FILTER_SETTLE_S), maximum=BANDWIDTH_HZ, default=20.0)
+FILTER = Limits(minimum=min(FILTER_SETTLE_S), maximum=20e6, default=10.0)
 
 
 def settle_s(filter_hz: float, frequency_hz: float) -> float:
     """Return how long after a change a reading is right to its last digit."""
     return FILTER_SETTLE_S[filter_hz] + SETTLE_CYCLES / frequency_hz
-
-
-def aperture_s(frequency_hz: float) -> float:
-    """Return how long one reading takes."""
-    return APERTURE_S + APERTURE_CYCLES / frequency_hz
 
 
 @dataclass(slots=True)
@@ -110,21 +100,19 @@ class Meter:
             begin_s += RANGE_CHANGE_S
         self.changed = False
         self.reading_v = self._digits(level_v)
-        drive = self.world.drive
-        frequency_hz = drive.frequency_hz if drive.on else math.inf
-        self.busy_until_s = begin_s + aperture_s(frequency_hz)
+        self.busy_until_s = begin_s + READING_S
 
     def level_v(self, now_s: float) -> float:
         """Return what the detector makes of the level at the terminals at one time."""
         look = self.world.look(self.place, now_s)
-        seed, noise_rel = self.world.seed, self.world.noise_rel
+        seed, quality = self.world.seed, self.world.quality
         frequency_hz = look.drive.frequency_hz
-        pole_hz = BANDWIDTH_HZ * (1 + 0.02 * uniform_draw(seed, self.place, "pole"))
-        gain = 1 + GAIN_ERROR_REL * uniform_draw(seed, self.place, "gain")
+        pole_hz = quality.meter_pole_hz * (1 + 0.02 * uniform_draw(seed, self.place, "pole"))
+        gain = 1 + quality.meter_error_rel * uniform_draw(seed, self.place, "gain")
         gain /= math.hypot(1.0, frequency_hz / pole_hz)
         gain *= _filter_gain(self.filter_hz, frequency_hz)
         gain *= 1 - _transient(look.since_change_s, settle_s(self.filter_hz, frequency_hz))
-        return look.level_vrms * gain * (1 + noise_rel * look.draw)
+        return look.level_vrms * gain * (1 + quality.noise_rel * look.draw)
 
     def _suits(self, level_v: float) -> bool:
         return 0.1 * self.range_v <= level_v <= OVERRANGE * self.range_v or (

@@ -5,6 +5,7 @@ commands do belongs to the devices (``source``, ``meter``); this module knows ho
 exchanged.
 """
 
+import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from typing import Any, Protocol, TypeAlias
@@ -86,11 +87,15 @@ class Instrument:
     Args:
         device: What the commands act on.
         tree: The command table.
+
+    Attributes:
+        free_at_s: When it is done with the last message; ``*WAI`` holds up the next one too.
     """
 
     def __init__(self, device: Device, tree: HeaderTree[Command]) -> None:
         self.device = device
         self.status = Status()
+        self.free_at_s = -math.inf
         self._tree = tree
         self._waiting: Response | None = None
 
@@ -106,6 +111,7 @@ class Instrument:
         moment = Moment(now_s=now_s, status=self.status)
         self.status.catch_up(now_s)
         self._execute(message, moment)
+        self.free_at_s = moment.now_s
         if not moment.responses:
             return None
         return Response(";".join(moment.responses), moment.now_s)

@@ -226,10 +226,10 @@ class _Loop:
         while station.waiting and station.busy_until_s <= now_s:
             client, message = station.waiting.popleft()
             response = station.instrument.handle(message, now_s)
+            station.busy_until_s = station.instrument.free_at_s
             if response is None:
                 self._answered(client)
                 continue
-            station.busy_until_s = response.ready_at_s
             due_s = max(response.ready_at_s, client.last_due_s)
             for piece in station.unkindness.spoil(response.text.encode("latin-1") + b"\n"):
                 due_s += piece.pause_s

@@ -57,7 +57,6 @@ class PracticeWire:
         self._unkindness = Unkindness(faults)
         self._arriving: deque[tuple[float, bytes | None]] = deque()
         self._open = True
-        self._busy_until_s = float("-inf")
 
     def send(self, message: str) -> None:
         """Send a program message that has no response.
@@ -124,10 +123,9 @@ class PracticeWire:
     def _transmit(self, message: str) -> None:
         """Let the instrument execute each line as soon as it is done with the one before."""
         for line in message.split("\n"):
-            self._busy_until_s = max(self._busy_until_s, self._clock.now_s())
-            response = self._instrument.handle(line, self._busy_until_s)
+            now_s = max(self._instrument.free_at_s, self._clock.now_s())
+            response = self._instrument.handle(line, now_s)
             if response is not None:
-                self._busy_until_s = response.ready_at_s
                 self._answer(response)
 
     def _answer(self, response: Response) -> None:

@@ -4,6 +4,7 @@ The instruments share one ``World``; it may be used from several threads.
 """
 
 import hashlib
+import math
 from dataclasses import dataclass
 from statistics import NormalDist
 from threading import RLock
@@ -83,26 +84,51 @@ class Look:
     draw: float
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Quality:
+    """How good the instruments are; each one's own errors lie somewhere inside these limits.
+
+    The defaults keep what the generic drivers promise of an instrument.
+
+    Attributes:
+        noise_rel: Standard deviation of one reading, relative; 0 for none.
+        meter_error_rel: Largest error of a meter's gain.
+        meter_pole_hz: The one pole of each meter's amplifier, within 2 %.
+        source_error_rel: Largest error of the source's level.
+    """
+
+    noise_rel: float = 3e-4
+    meter_error_rel: float = 4e-4
+    meter_pole_hz: float = 250e6
+    source_error_rel: float = 3e-3
+
+
+PERFECT = Quality(noise_rel=0.0, meter_error_rel=0.0, meter_pole_hz=math.inf, source_error_rel=0.0)
+"""Instruments without errors, for tests that look at something else."""
+
+
 class World:
     """The source's drive, the board on the table, and the dice of the readings.
 
     Args:
         board: The first board; a cable when left out.
-        seed: Chooses the instruments' small errors and the noise of every reading.
-        noise_rel: Standard deviation of a reading, relative; 0 for none.
+        seed: Chooses the instruments' own errors and the noise of every reading.
+        quality: How good the instruments are.
     """
 
     def __init__(
-        self, board: Board | None = None, *, seed: int = 0, noise_rel: float = 3e-4
+        self, board: Board | None = None, *, seed: int = 0, quality: Quality | None = None
     ) -> None:
         self.seed = seed
-        self.noise_rel = noise_rel
+        self.quality = quality or Quality()
         self._lock = RLock()
         self._board: Board = board or Bypass()
         self._drive = Drive()
         self._changed_s = float("-inf")
         self._counts: dict[str, dict[tuple[Place, Drive], int]] = {}
         self._known: dict[Drive, Levels] = {}
+        error = self.quality.source_error_rel * uniform_draw(seed, "source", "level")
+        self._source_gain = 1 + error
 
     @property
     def board_label(self) -> str:
@@ -169,7 +195,7 @@ class World:
     def _levels(self) -> Levels:
         drive = self._drive
         if drive not in self._known:
-            emf_vrms = drive.emf_vrms if drive.on else 0.0
+            emf_vrms = drive.emf_vrms * self._source_gain if drive.on else 0.0
             if len(self._known) >= DRIVES_REMEMBERED:
                 self._known.clear()
             self._known[drive] = self._board.levels(

@@ -1,31 +1,34 @@
 """The practice voltmeter."""
 
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
 
 from benchlog.practice.meter import (
-    BANDWIDTH_HZ,
     FILTER_SETTLE_S,
-    GAIN_ERROR_REL,
     RANGES_V,
-    aperture_s,
+    READING_S,
     make_meter,
     settle_s,
 )
 from benchlog.practice.scpi import Instrument
-from benchlog.practice.world import Drive, World
+from benchlog.practice.world import PERFECT, Drive, Quality, World
 from tests.fakes.practice_talk import answer, errors
 
 LONG = 1e3
 
 
 def bench(
-    level_vrms: float, *, frequency_hz: float = 1e3, noise_rel: float = 0.0, seed: int = 0
+    level_vrms: float,
+    *,
+    frequency_hz: float = 1e3,
+    quality: Quality = PERFECT,
+    seed: int = 0,
 ) -> Instrument:
     """Return a meter on a cable that carries a level since time 0."""
-    world = World(noise_rel=noise_rel, seed=seed)
+    world = World(quality=quality, seed=seed)
     world.set_drive(Drive(frequency_hz=frequency_hz, emf_vrms=level_vrms, on=True), 0.0)
     return make_meter(world, "input")
 
@@ -54,9 +57,9 @@ def read(meter: Instrument, message: str = "READ?", now_s: float = LONG) -> floa
     ],
 )
 def test_every_way_to_read_gives_the_level(message: str) -> None:
-    """Within the meter's own gain error; errors stay away."""
+    """To its last digits; errors stay away."""
     meter = bench(0.5)
-    assert read(meter, message) == pytest.approx(0.5, rel=GAIN_ERROR_REL * 1.1)
+    assert read(meter, message) == pytest.approx(0.5, rel=1e-6)
     assert errors(meter) == []
 
 
@@ -71,10 +74,15 @@ def test_reading_format() -> None:
 
 def test_two_meters_differ_a_little_and_always_the_same() -> None:
     """The gain error belongs to the instrument: it is no noise, and it is within its bound."""
-    readings = {seed: read(bench(0.5, seed=seed)) for seed in range(20)}
-    assert readings == {seed: read(bench(0.5, seed=seed)) for seed in range(20)}
-    assert len(set(readings.values())) == 20
-    assert all(abs(value / 0.5 - 1) < GAIN_ERROR_REL * 1.1 for value in readings.values())
+    quality = Quality(noise_rel=0.0, source_error_rel=0.0)
+
+    def readings() -> list[float]:
+        return [read(bench(0.5, quality=quality, seed=seed)) for seed in range(20)]
+
+    errors_rel = [value / 0.5 - 1 for value in readings()]
+    assert readings() == readings()
+    assert len(set(errors_rel)) == 20
+    assert 0.5 * quality.meter_error_rel < max(errors_rel) < 1.01 * quality.meter_error_rel
 
 
 @pytest.mark.parametrize(
@@ -116,7 +124,7 @@ def test_fixed_range_overloads_and_automatic_does_not() -> None:
         ("FETC?", -230),
         ("CONF:VOLT:AC 1000", -222),
         ("VOLT:AC:RANG -1", -222),
-        ("VOLT:AC:BAND 1", -222),
+        ("VOLT:AC:BAND 0.9", -222),
         ("CONF:VOLT:AC 1 A", -131),
         ("MEAS:VOLT:DC?", -113),
         ("FUNC 'CURR'", -224),
@@ -142,14 +150,14 @@ def test_abort_takes_the_reading_away() -> None:
 def test_reset() -> None:
     """Automatic range, middle filter, no reading."""
     meter = bench(0.5)
-    answer(meter, "VOLT:AC:RANG 10;BAND 3;:READ?", LONG)
-    assert answer(meter, "*RST;:VOLT:AC:RANG:AUTO?;:VOLT:AC:BAND?") == "1;+2.000000E+01"
+    answer(meter, "VOLT:AC:RANG 10;BAND 1;:READ?", LONG)
+    assert answer(meter, "*RST;:VOLT:AC:RANG:AUTO?;:VOLT:AC:BAND?") == "1;+1.000000E+01"
     assert answer(meter, "FETC?") is None
 
 
 @pytest.mark.parametrize(
     ("wanted", "filter_hz"),
-    [("3", 3), ("MIN", 3), ("19.9", 3), ("20", 20), ("100 HZ", 20), ("200", 200), ("MAX", 200)],
+    [("1", 1), ("MIN", 1), ("9.9", 1), ("10", 10), ("100 HZ", 10), ("200", 200), ("MAX", 200)],
 )
 @pytest.mark.parametrize("header", ["VOLT:AC:BAND", "SENS:DET:BAND"])
 def test_filter_is_the_fastest_that_still_passes(
@@ -177,8 +185,8 @@ def test_patience_always_gives_the_same_digits(filter_hz: float, frequency_hz: f
 def test_signal_below_the_filter_reads_low() -> None:
     """The wrong filter is a visible mistake; the right one passes all."""
     meter = bench(0.05, frequency_hz=20.0)
-    right = read(meter, "VOLT:AC:BAND 20;:READ?")
-    assert read(meter, "VOLT:AC:BAND 3;:READ?") == right
+    right = read(meter, "VOLT:AC:BAND 10;:READ?")
+    assert read(meter, "VOLT:AC:BAND 1;:READ?") == right
     assert read(meter, "VOLT:AC:BAND 200;:READ?") < 0.4 * right
 
 
@@ -187,25 +195,42 @@ def test_own_changes_are_waited_for() -> None:
     meter = bench(0.05)
     calm = meter.handle("READ?", LONG)
     fast = meter.handle("VOLT:AC:BAND 200;:READ?", LONG)
-    slow = meter.handle("VOLT:AC:BAND 3;:READ?", LONG)
+    slow = meter.handle("VOLT:AC:BAND 1;:READ?", LONG)
     again = meter.handle("READ?", LONG)
     assert calm is not None
     assert fast is not None
     assert slow is not None
     assert again is not None
-    assert calm.ready_at_s - LONG == pytest.approx(aperture_s(1e3))
-    assert fast.ready_at_s - LONG == pytest.approx(FILTER_SETTLE_S[200.0] + aperture_s(1e3))
-    assert slow.ready_at_s - LONG == pytest.approx(FILTER_SETTLE_S[3.0] + aperture_s(1e3))
-    assert again.ready_at_s - LONG == pytest.approx(aperture_s(1e3))
+    assert calm.ready_at_s - LONG == pytest.approx(READING_S)
+    assert fast.ready_at_s - LONG == pytest.approx(FILTER_SETTLE_S[200.0] + READING_S)
+    assert slow.ready_at_s - LONG == pytest.approx(FILTER_SETTLE_S[1.0] + READING_S)
+    assert again.ready_at_s - LONG == pytest.approx(READING_S)
     assert calm.text == fast.text == slow.text == again.text
 
 
 def test_band_ends_in_one_pole() -> None:
-    """Down by 3 dB near 10 MHz; a tenth of that costs half a percent."""
-    flat = read(bench(0.5, frequency_hz=1e3))
-    assert read(bench(0.5, frequency_hz=1e6)) / flat == pytest.approx(1 / math.hypot(1, 0.1), 1e-3)
-    down = read(bench(0.5, frequency_hz=BANDWIDTH_HZ)) / flat
-    assert down == pytest.approx(math.sqrt(0.5), rel=0.011)
+    """Down by 3 dB near the pole, which is each meter's own; a tenth of it costs half a percent."""
+    quality = replace(PERFECT, meter_pole_hz=1e6)
+
+    def gain(frequency_hz: float) -> float:
+        return read(bench(0.5, frequency_hz=frequency_hz, quality=quality)) / 0.5
+
+    assert gain(1e5) == pytest.approx(1 / math.hypot(1, 0.1), rel=5e-4)
+    assert gain(1e6) == pytest.approx(math.sqrt(0.5), rel=0.011)
+    assert gain(1e6) != pytest.approx(math.sqrt(0.5), rel=1e-6)
+
+
+@pytest.mark.parametrize("seed", range(5))
+@pytest.mark.parametrize(
+    ("frequency_hz", "limit_rel"), [(10.0, 6e-4), (1e5, 6e-4), (1e6, 2e-3), (1e7, 2e-3)]
+)
+def test_meter_keeps_what_its_driver_promises(
+    seed: int, frequency_hz: float, limit_rel: float
+) -> None:
+    """The accuracy table of the generic driver holds for every meter, noise left aside."""
+    quality = Quality(noise_rel=0.0, source_error_rel=0.0)
+    reading = read(bench(0.05, frequency_hz=frequency_hz, quality=quality, seed=seed))
+    assert abs(reading / 0.05 - 1) < limit_rel
 
 
 def test_floor_adds_in_quadrature() -> None:
@@ -218,7 +243,7 @@ def test_floor_adds_in_quadrature() -> None:
 
 def test_noise_of_readings_has_the_stated_size() -> None:
     """Standard deviation of 400 readings; bounds are four standard errors."""
-    meter = bench(0.05, noise_rel=3e-4)
+    meter = bench(0.05, quality=Quality())
     readings = np.array([read(meter) for _ in range(400)])
     scatter = readings.std(ddof=1) / readings.mean()
-    assert scatter == pytest.approx(3e-4, rel=4 / math.sqrt(800))
+    assert scatter == pytest.approx(Quality().noise_rel, rel=4 / math.sqrt(800))

@@ -88,7 +88,7 @@ def test_execution_error_goes_on_with_the_message(source: Instrument) -> None:
 
 def test_execution_error_found_while_reading_goes_on_too(meter: Instrument) -> None:
     """What counts is the class of the number, not where it was found."""
-    assert answer(meter, "FUNC 'CURR';:VOLT:AC:BAND 3;BAND?") == "+3.000000E+00"
+    assert answer(meter, "FUNC 'CURR';:VOLT:AC:BAND 1;BAND?") == "+1.000000E+00"
     assert errors(meter) == [-224]
 
 
@@ -190,6 +190,11 @@ class TestOperationComplete:
         assert errors(meter) == []
         answer(meter, "INIT;INIT", 20.0)
         assert errors(meter) == [-213]
+
+    def test_wait_holds_up_the_next_message_too(self, meter: Instrument) -> None:
+        """It may stand alone in its message."""
+        assert meter.handle("INIT;*WAI", 10.0) is None
+        assert meter.free_at_s == meter.device.busy_until_s > 10.0
 
     def test_idle_is_complete_at_once(self, source: Instrument) -> None:
         """With nothing pending the bit is there in the same message."""

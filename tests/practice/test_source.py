@@ -106,7 +106,7 @@ def test_load_changes_what_is_shown_and_not_what_is_put_out(
         ("FREQ 0", -222),
         ("FREQ 1E400", -222),
         ("VOLT 4", -222),
-        ("VOLT 1 uV", -222),
+        ("VOLT 1 UV", -222),
         ("VOLT -1", -222),
         ("VOLT 1 HZ", -131),
         ("OUTP:LOAD 0.5", -222),
@@ -126,7 +126,8 @@ def test_refused_settings(source: Instrument, world: World, message: str, number
 
 
 @pytest.mark.parametrize(
-    ("word", "emf_vpp"), [("MIN", 2e-3), ("MAX", 20.0), ("DEF", 0.2), ("MAXIMUM", 20.0)]
+    ("word", "emf_vpp"),
+    [("MIN", 1e-4 * math.sqrt(8)), ("MAX", 20.0), ("DEF", 0.2), ("MAXIMUM", 20.0)],
 )
 def test_level_by_word(source: Instrument, world: World, word: str, emf_vpp: float) -> None:
     """The ends of the range can be named."""
@@ -140,7 +141,7 @@ def test_largest_level_is_20_vpp_open(source: Instrument, world: World) -> None:
     assert world.drive.emf_vrms == pytest.approx(20 / math.sqrt(8))
     assert number(source, "VOLT? MAX") == pytest.approx(10 / math.sqrt(8))
     answer(source, "VOLT:UNIT VPP")
-    assert number(source, "VOLT? MIN") == pytest.approx(1e-3)
+    assert number(source, "VOLT? MIN") == pytest.approx(5e-5 * math.sqrt(8))
     assert number(source, "FREQ? MAX") == 20e6
     assert number(source, "OUTP:LOAD? DEF") == 50.0
     assert errors(source) == []

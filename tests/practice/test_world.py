@@ -9,9 +9,11 @@ import pytest
 from benchlog.practice.world import (
     BOARDS_REMEMBERED,
     DRIVES_REMEMBERED,
+    PERFECT,
     Bypass,
     Drive,
     Levels,
+    Quality,
     World,
     normal_draw,
     uniform_draw,
@@ -36,7 +38,7 @@ class Tenfold:
 
 def test_empty_table_is_a_cable() -> None:
     """Without a board both meters see the source."""
-    world = World()
+    world = World(quality=PERFECT)
     world.set_drive(ON, 0.0)
     assert world.board_label == Bypass().label
     assert world.look("input", 1.0).level_vrms == world.look("output", 1.0).level_vrms == 0.5
@@ -45,7 +47,7 @@ def test_empty_table_is_a_cable() -> None:
 def test_board_is_asked_once_for_each_drive() -> None:
     """Levels are kept until the board is taken away."""
     board = Tenfold()
-    world = World(board)
+    world = World(board, quality=PERFECT)
     world.set_drive(ON, 0.0)
     for _ in range(3):
         assert world.look("input", 1.0).level_vrms == 0.5
@@ -74,6 +76,18 @@ def test_output_off_leaves_the_boards_noise() -> None:
     world.set_drive(Drive(emf_vrms=0.5, on=False), 0.0)
     assert world.look("output", 1.0).level_vrms == 0.3
     assert world.look("input", 1.0).level_vrms == 0.0
+
+
+def test_source_has_an_error_of_its_own() -> None:
+    """Every bench's source is a little off, always by the same, within its limit."""
+    levels = []
+    for seed in range(20):
+        world = World(seed=seed)
+        world.set_drive(ON, 0.0)
+        levels.append(world.look("input", 1.0).level_vrms / 0.5 - 1)
+        assert world.look("output", 2.0).level_vrms / 0.5 - 1 == levels[-1]
+    assert len(set(levels)) == 20
+    assert 0.5 < max(abs(level) for level in levels) / Quality().source_error_rel < 1.0
 
 
 def test_time_since_a_change() -> None:
