@@ -1,0 +1,269 @@
+"""Links to real instruments: the one file that knows pyvisa.
+
+Open means identified.  A link that may hold half an exchange is dirty and takes nothing but
+``recover`` and ``close``.  Seconds outside, milliseconds only here.
+"""
+
+import socket
+import time
+from collections.abc import Iterator
+from contextlib import contextmanager, suppress
+from functools import cache
+from typing import Any, cast
+
+import pyvisa
+from pyvisa.constants import StatusCode
+from pyvisa.resources import MessageBasedResource
+from pyvisa.rname import InvalidResourceName, ResourceName
+
+from benchlog.bench.driver import LinkSettings
+from benchlog.bench.recover import IDENTIFY, recover_link
+from benchlog.bench.reply import parse_identity
+from benchlog.errors import (
+    BenchlogError,
+    LinkError,
+    LinkLost,
+    LinkRefused,
+    LinkTimeout,
+    Misuse,
+    ReplyError,
+)
+
+BACKEND = "@py"
+_QUIET_S = 0.05
+# A flood that never ends must not keep a recovery going for ever.
+_MOST_DRAINED = 1000
+_PADDING = "\r\n\0 "
+_LOST = {
+    StatusCode.error_connection_lost,
+    StatusCode.error_invalid_object,
+    StatusCode.error_system_error,
+}
+
+
+def open_link(
+    address: str,
+    *,
+    settings: LinkSettings | None = None,
+    timeout_s: float | None = None,
+    backend: str = BACKEND,
+) -> "VisaWire":
+    """Open a link and let the instrument identify itself.
+
+    Args:
+        address: A VISA resource name, ``TCPIP::192.0.2.7::5025::SOCKET``.
+        settings: Terminators and default timeout, from the driver.
+        timeout_s: How long the instrument may take to answer ``*IDN?``.
+        backend: Which VISA implementation pyvisa is to use.
+
+    Returns:
+        The link; close it.
+
+    Raises:
+        LinkRefused: The address is malformed, nothing is there, or what is there does not
+            identify itself.
+    """
+    rules = settings or LinkSettings()
+    _check_address(address)
+    transport = _Transport(address, rules, backend)
+    try:
+        transport.open(timeout_s or rules.timeout_s)
+        identity = transport.ask(IDENTIFY, timeout_s or rules.timeout_s)
+        parse_identity(identity)
+    except (LinkError, ReplyError) as error:
+        transport.close()
+        raise LinkRefused(
+            f"the instrument did not identify itself: {error.what}",
+            where=address,
+            expected="an answer to *IDN?",
+            hint="check that it is switched on, the cable, the address, and that nobody else "
+            "holds it",
+        ) from error
+    except BaseException:
+        transport.close()
+        raise
+    return VisaWire(transport, identity, timeout_s=timeout_s or rules.timeout_s)
+
+
+class VisaWire:
+    """A link over pyvisa; see ``benchlog.bench.wire.Wire``. Made by ``open_link``."""
+
+    def __init__(self, transport: "_Transport", identity: str, *, timeout_s: float) -> None:
+        self.address = transport.address
+        self.identity = identity
+        self.dirty = False
+        self._transport = transport
+        self._timeout_s = timeout_s
+        self._closed = False
+
+    def send(self, message: str) -> None:
+        """Send a message that has no answer."""
+        with self._exchange():
+            self._transport.send(message, self._timeout_s)
+
+    def ask(self, message: str, *, timeout_s: float) -> str:
+        """Send a message whose last line is a query, and return the answer."""
+        with self._exchange():
+            return self._transport.ask(message, timeout_s)
+
+    def recover(self) -> None:
+        """Make the link clean, reopening it if need be."""
+        if self._closed:
+            raise Misuse(f"the link to {self.address} is closed")
+        self.dirty = True
+        recover_link(self._transport, self.identity, timeout_s=self._timeout_s)
+        self.dirty = False
+
+    def close(self) -> None:
+        """Close the link; twice is quiet."""
+        self._closed = True
+        self._transport.close()
+
+    @contextmanager
+    def _exchange(self) -> Iterator[None]:
+        if self._closed:
+            raise Misuse(f"the link to {self.address} is closed")
+        if self.dirty:
+            raise Misuse(f"the link to {self.address} is dirty: recover it first")
+        # Set before anything moves: an interrupt at any moment must find it set.
+        self.dirty = True
+        yield
+        self.dirty = False
+
+
+class _Transport:
+    """Text over one pyvisa resource, with foreign errors turned into ours."""
+
+    def __init__(self, address: str, settings: LinkSettings, backend: str) -> None:
+        self.address = address
+        self._settings = settings
+        self._backend = backend
+        self._resource: MessageBasedResource | None = None
+
+    def open(self, timeout_s: float) -> None:
+        """Open or reopen; says nothing yet about whether anybody is there."""
+        self.close()
+        try:
+            resource = _manager(self._backend).open_resource(
+                self.address,
+                open_timeout=_milliseconds(timeout_s),
+                read_termination=self._settings.read_terminator,
+                write_termination=self._settings.write_terminator,
+                timeout=_milliseconds(timeout_s),
+            )
+        # pyvisa-py raises bare exceptions of many kinds here, for unknown hosts among others.
+        except Exception as error:
+            raise LinkRefused(
+                f"the link cannot be opened: {_first_line(error)}",
+                where=self.address,
+                hint="check address, power and cable; `benchlog bench check` says more",
+            ) from error
+        self._resource = cast("MessageBasedResource", resource)
+
+    def send(self, message: str, timeout_s: float) -> None:
+        """Write a whole message in one go: separate writes wait for each other on a network."""
+        end = self._settings.write_terminator
+        data = (message.replace("\n", end) + end).encode("ascii")
+        with self._translated(message, timeout_s) as resource:
+            resource.timeout = _milliseconds(timeout_s)
+            resource.write_raw(data)
+
+    def ask(self, message: str, timeout_s: float) -> str:
+        """Write a message and read one answer."""
+        self.send(message, timeout_s)
+        return self.read(message, timeout_s)
+
+    def read(self, asked: str, timeout_s: float) -> str:
+        """Read one answer, without terminator and padding."""
+        with self._translated(asked, timeout_s) as resource:
+            resource.timeout = _milliseconds(timeout_s)
+            return bytes(resource.read_raw()).decode("latin-1").strip(_PADDING)
+
+    def drain(self) -> None:
+        """Clear the instrument where its transport can, then read until nothing more comes."""
+        if self._resource is None:
+            return
+        # Sockets and simulators know no device clear, or only half of it.
+        with suppress(Exception):
+            self._resource.clear()
+        for _ in range(_MOST_DRAINED):
+            try:
+                self.read("", _QUIET_S)
+            except LinkTimeout:
+                return
+
+    def close(self) -> None:
+        """Close the resource; whatever a dying link says about it is no longer of interest."""
+        if self._resource is not None:
+            with suppress(Exception):
+                self._resource.close()
+            self._resource = None
+
+    @contextmanager
+    def _translated(self, message: str, timeout_s: float) -> Iterator[MessageBasedResource]:
+        if self._resource is None:
+            raise LinkLost("the link is not open", where=self.address)
+        began_s = time.monotonic()
+        try:
+            yield self._resource
+        except BenchlogError:
+            raise
+        except pyvisa.VisaIOError as error:
+            gone = error.error_code in _LOST or self._peer_is_gone()
+            if gone or error.error_code != StatusCode.error_timeout:
+                raise self._lost(message, _first_line(error)) from error
+            raise LinkTimeout(
+                f"no answer to {message!r} within {time.monotonic() - began_s:.2g} s",
+                where=self.address,
+                expected=f"an answer within {timeout_s:g} s",
+                hint="check whether the instrument is busy, in local mode, or in a menu",
+            ) from error
+        except (pyvisa.Error, OSError, ValueError) as error:
+            raise self._lost(message, _first_line(error)) from error
+
+    def _lost(self, message: str, why: str) -> LinkLost:
+        return LinkLost(
+            f"the instrument went away at {message!r}: {why}",
+            where=self.address,
+            hint="check its power and its cable",
+        )
+
+    def _peer_is_gone(self) -> bool:
+        """Look whether the far end closed: pyvisa-py reports that as a timeout."""
+        session = cast("Any", self._resource).session
+        sessions = getattr(cast("Any", self._resource).visalib, "sessions", {})
+        wire = getattr(sessions.get(session), "interface", None)
+        if not isinstance(wire, socket.socket):
+            return False
+        try:
+            return wire.recv(1, socket.MSG_PEEK | socket.MSG_DONTWAIT) == b""
+        except BlockingIOError:
+            return False
+        except OSError:
+            return True
+
+
+@cache
+def _manager(backend: str) -> pyvisa.ResourceManager:
+    """Return the one manager of a backend: closing any of them would close every link."""
+    return pyvisa.ResourceManager(backend)
+
+
+def _check_address(address: str) -> None:
+    try:
+        ResourceName.from_string(address)
+    except InvalidResourceName as error:
+        raise LinkRefused(
+            f"{address!r} is not the address of an instrument: {_first_line(error)}",
+            where="address",
+            expected='a VISA resource name, like "TCPIP::192.0.2.7::5025::SOCKET"',
+        ) from error
+
+
+def _milliseconds(seconds: float) -> int:
+    return max(1, round(seconds * 1000.0))
+
+
+def _first_line(error: Exception) -> str:
+    lines = str(error).strip().splitlines()
+    return lines[0].rstrip(".") if lines else type(error).__name__
