@@ -17,7 +17,7 @@ from tests.fakes.record_strategies import figure_sets, point_lists, starts, verd
 from tests.fakes.sample_sweep import sample_figures, sample_start
 
 # One file takes all examples: hypothesis makes a new UUID or a new row for each.
-_SOME = settings(max_examples=60, deadline=None)
+_SOME = settings(max_examples=40, deadline=None)
 
 
 @pytest.fixture(scope="module")
