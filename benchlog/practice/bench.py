@@ -1,6 +1,6 @@
 """The three instruments of the practice bench around one table."""
 
-from typing import Literal, TypeAlias, get_args
+from typing import Literal, NamedTuple, TypeAlias, get_args
 
 from benchlog.practice.meter import make_meter
 from benchlog.practice.scpi import Instrument
@@ -9,6 +9,14 @@ from benchlog.practice.world import World
 
 Role: TypeAlias = Literal["source", "output meter", "input meter"]
 ROLES: tuple[Role, ...] = get_args(Role)
+
+
+class Addresses(NamedTuple):
+    """Where the instruments of one bench are reached, in the order of ``ROLES``."""
+
+    source: str
+    output_meter: str
+    input_meter: str
 
 
 def make_instruments(world: World) -> dict[Role, Instrument]:

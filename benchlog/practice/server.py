@@ -13,24 +13,16 @@ from heapq import heappop, heappush
 from itertools import count
 from threading import Thread
 from types import TracebackType
-from typing import NamedTuple, Self
+from typing import Self
 
 from benchlog.errors import InstrumentError, Misuse
-from benchlog.practice.bench import ROLES, Role, make_instruments
+from benchlog.practice.bench import ROLES, Addresses, Role, make_instruments
 from benchlog.practice.faults import Fault, Unkindness
 from benchlog.practice.scpi import Instrument
 from benchlog.practice.world import Board, World
 
 LONGEST_MESSAGE = 65_536
 INPUT_BUFFER_OVERRUN = -363
-
-
-class Addresses(NamedTuple):
-    """Where the instruments listen, as resource names."""
-
-    source: str
-    output_meter: str
-    input_meter: str
 
 
 @dataclass(frozen=True, slots=True)

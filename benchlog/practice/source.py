@@ -30,7 +30,7 @@ VRMS_PER = {"VRMS": 1.0, "VPP": 1 / (2 * math.sqrt(2)), "VPK": 1 / math.sqrt(2)}
 
 FREQUENCY = Limits(minimum=1e-3, maximum=20e6, default=1e3)
 EMF_VRMS = Limits(minimum=1e-4, maximum=20 * VRMS_PER["VPP"], default=0.2 * VRMS_PER["VPP"])
-LOAD = Limits(minimum=1.0, maximum=10e3, default=OUTPUT_OHM)
+LOAD = Limits(minimum=1.0, maximum=1e6, default=OUTPUT_OHM)
 
 _LIMIT_WORDS = ("MINimum", "MAXimum", "DEFault")
 

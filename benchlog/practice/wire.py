@@ -8,7 +8,7 @@ from collections import deque
 from collections.abc import Iterable, Mapping
 
 from benchlog.errors import IdentityError, LinkLost, LinkRefused, LinkTimeout, Misuse
-from benchlog.practice.bench import Role, make_instruments
+from benchlog.practice.bench import ROLES, Addresses, Role, make_instruments
 from benchlog.practice.faults import Fault, Unkindness
 from benchlog.practice.scpi import Instrument, Response
 from benchlog.practice.world import Board, World
@@ -38,7 +38,7 @@ class PracticeWire:
         instrument: The far end.
         clock: Passes while the instrument is busy.
         address: What to call the far end in messages.
-        faults: What goes wrong with its replies.
+        unkindness: What goes wrong with its replies; nothing when left out.
     """
 
     def __init__(
@@ -47,14 +47,14 @@ class PracticeWire:
         clock: VirtualClock,
         *,
         address: str,
-        faults: Iterable[Fault] = (),
+        unkindness: Unkindness | None = None,
     ) -> None:
         self.address = address
         self.identity = instrument.device.identity
         self.dirty = False
         self._instrument = instrument
         self._clock = clock
-        self._unkindness = Unkindness(faults)
+        self._unkindness = unkindness or Unkindness()
         self._arriving: deque[tuple[float, bytes | None]] = deque()
         self._open = True
 
@@ -167,7 +167,7 @@ class PracticeWires:
 
     Args:
         world: The table.
-        faults: What goes wrong, by role.
+        faults: What goes wrong with replies, by role.
     """
 
     def __init__(
@@ -176,8 +176,13 @@ class PracticeWires:
         self.world = world
         self.clock = VirtualClock()
         self.instruments = make_instruments(world)
-        self._faults = dict(faults or {})
-        self.addresses: dict[Role, str] = {role: f"practice::{role}" for role in self.instruments}
+        given = faults or {}
+        self._unkindness = {role: Unkindness(given.get(role, ())) for role in self.instruments}
+
+    @property
+    def addresses(self) -> Addresses:
+        """What the wires call their far ends."""
+        return Addresses(*(f"practice::{role}" for role in ROLES))
 
     def put_board(self, board: Board | None) -> None:
         """Put a board on the table now; None bypasses it."""
@@ -188,27 +193,21 @@ class PracticeWires:
         return PracticeWire(
             self.instruments[role],
             self.clock,
-            address=self.addresses[role],
-            faults=self._faults.get(role, ()),
+            address=self.addresses[ROLES.index(role)],
+            unkindness=self._unkindness[role],
         )
 
-    def open_wire(
-        self,
-        address: str,
-        *,
-        settings: object = None,  # noqa: ARG002 - the shape of an opener of real links
-        timeout_s: float = 1.0,  # noqa: ARG002 - see above
-    ) -> PracticeWire:
-        """Return a new wire to an address, as an opener of real links would.
+    def open_at(self, address: str) -> PracticeWire:
+        """Return a new wire to one of the addresses.
 
         Raises:
             LinkRefused: No practice instrument has this address.
         """
-        for role, known in self.addresses.items():
+        for role, known in zip(ROLES, self.addresses, strict=True):
             if address == known:
                 return self.open(role)
         raise LinkRefused(
             "there is no practice instrument at this address",
             where=address,
-            expected=", ".join(self.addresses.values()),
+            expected=", ".join(self.addresses),
         )

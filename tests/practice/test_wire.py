@@ -165,6 +165,15 @@ def test_connection_that_stays_away_is_lost(kind: FaultKind) -> None:
     assert wire.dirty
 
 
+def test_faults_are_counted_by_instrument() -> None:
+    """A new wire does not begin the count again."""
+    wires = PracticeWires(World(), faults={"source": [Fault(kind="dropped", nth=2)]})
+    assert wires.open("source").ask("*OPC?", timeout_s=1.0) == "1"
+    wire = wires.open("source")
+    with pytest.raises(LinkTimeout):
+        wire.ask("*OPC?", timeout_s=1.0)
+
+
 def test_other_instrument_is_noticed() -> None:
     """Recovery compares who answers with who answered before."""
     wire = wire_with()
@@ -176,7 +185,8 @@ def test_other_instrument_is_noticed() -> None:
 def test_wires_are_opened_by_address() -> None:
     """An opener of real links can be replaced by this one."""
     wires = PracticeWires(World())
-    wire = wires.open_wire(wires.addresses["source"], settings=None, timeout_s=2.0)
+    wire = wires.open_at(wires.addresses.source)
+    assert wire.address == "practice::source"
     assert wire.identity.startswith("benchlog practice,sine source")
     with pytest.raises(LinkRefused, match="no practice instrument"):
-        wires.open_wire("TCPIP::10.0.0.1::5025::SOCKET")
+        wires.open_at("TCPIP::10.0.0.1::5025::SOCKET")
