@@ -6,7 +6,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from benchlog.errors import BenchlogError
+from benchlog.errors import BenchlogError, LogbookError
 from benchlog.logbook.store import Logbook
 from tests.fakes.sample_sweep import (
     DESIGN_SHA256,
@@ -34,6 +34,16 @@ def whole(tmp_path_factory: pytest.TempPathFactory, empty_logbook_bytes: bytes) 
         figures_id = logbook.add_figures(_START.uuid, sample_figures())
         logbook.add_verdict(figures_id, sample_verdict(), "budget")
     return path
+
+
+def test_bytes_that_are_no_text_in_the_schema_are_said_to_be_damage(whole: Path) -> None:
+    """SQLite quotes the damaged bytes in its message, which Python then cannot read."""
+    path = whole.with_name("spoilt.db")
+    path.write_bytes(
+        whole.read_bytes().replace(b"CREATE TABLE verdict", b"CREATE TABL\x80 verdict")
+    )
+    with pytest.raises(LogbookError, match="damaged: it holds bytes that are not text"):
+        Logbook(path)
 
 
 def _read_everything(path: Path) -> None:

@@ -53,6 +53,15 @@ def test_a_new_calibration_is_another_instrument_row(logbook: Logbook) -> None:
     assert logbook.sweep(second.uuid).start.instruments == used
 
 
+def test_an_empty_due_date_is_not_a_missing_one(logbook: Logbook) -> None:
+    """Two uses of an instrument that differ only there both come back as they were."""
+    first, *_ = sample_start().instruments
+    used = tuple(replace(first, calibration_due=due) for due in (None, "", None))
+    start = sample_start(instruments=used)
+    logbook.begin_sweep(start)
+    assert logbook.sweep(start.uuid).start.instruments == used
+
+
 def test_a_design_is_known_by_its_hash_afterwards(logbook: Logbook) -> None:
     """The text is given with the first sweep; later ones may name it only."""
     first, second = (sample_start(design_sha256=DESIGN_SHA256) for _ in range(2))
