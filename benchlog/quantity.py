@@ -232,21 +232,20 @@ class _Wanted:
     kind: Kind
 
     def refusal(self, why: str, *, hint: str | None = None) -> QuantityError:
-        shown = _shown(self.entry)
         return QuantityError(
-            f"{self.field}: {shown} {why}",
+            f"{self.field}: {shown(self.entry)} {why}",
             where=self.field,
             expected=f'{self.kind.noun}, for example "{self.kind.example}"',
             hint=hint,
         )
 
 
-def _shown(entry: object) -> str:
+def shown(entry: object) -> str:
     """Return an entry as a message shows it, cut where it is long."""
     if isinstance(entry, int) and abs(entry) > 10**_LONGEST:
         return "a number too large to write"
-    shown = repr(entry)
-    return shown if len(shown) <= _LONGEST + 2 else f"{shown[:_LONGEST]}..."
+    text = repr(entry)
+    return text if len(text) <= _LONGEST + 2 else f"{text[:_LONGEST]}..."
 
 
 def _read(entry: Entry, field: str, kind: Kind) -> float:

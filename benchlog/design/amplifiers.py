@@ -11,6 +11,7 @@ from benchlog.circuit.amplifier import Amplifier
 from benchlog.design.entries import optional, read_part
 from benchlog.design.file import AmplifierFile, GbwFile
 from benchlog.errors import DesignFileError
+from benchlog.quantity import Entry
 
 # Common practice where a data sheet gives a typical value only: a fifth to both sides.
 TYPICAL_SPREAD = 0.2
@@ -61,7 +62,7 @@ def read_amplifier(
     return ReadAmplifier(amplifier=amplifier, tolerances=tolerances)
 
 
-def _gbw(entry: str | float | GbwFile, where: str) -> tuple[float | None, float, float | None]:
+def _gbw(entry: Entry | GbwFile, where: str) -> tuple[float | None, float, float | None]:
     """Return lowest, typical and highest GBW."""
     if not isinstance(entry, GbwFile):
         return None, quantity.hertz(entry, field=where), None
@@ -90,28 +91,32 @@ def _swing(
 ) -> tuple[float | None, float | None]:
     """Return the output's peak above and below rest, both positive, or None where not known.
 
-    A supply that does not straddle zero is taken to rest at its middle.
+    The rails bound it; a supply that does not straddle zero is taken to rest at its middle.
     """
-    entry = file.output_swing
-    if isinstance(entry, UnsetType):
-        if rails_v is None:
-            return None, None
-        low_v, high_v = rails_v
-        half_v = (high_v - low_v) / 2
-        return (high_v, -low_v) if low_v < 0 < high_v else (half_v, half_v)
+    sides_v = None if isinstance(file.output_swing, UnsetType) else _sides(file.output_swing, where)
+    if rails_v is None:
+        return sides_v or (None, None)
+    low_v, high_v = rails_v
+    half_v = (high_v - low_v) / 2
+    bound_v = (high_v, -low_v) if low_v < 0 < high_v else (half_v, half_v)
+    if sides_v is None:
+        return bound_v
+    return min(sides_v[0], bound_v[0]), min(sides_v[1], bound_v[1])
+
+
+def _sides(entry: Entry | list[Entry], where: str) -> tuple[float, float]:
+    """Read a peak for both sides, or the lowest and the highest output voltage."""
     if not isinstance(entry, list):
         peak_v = quantity.volt(entry, field=where)
-        low_v, high_v = -peak_v, peak_v
-    elif len(entry) == 2:
-        low_v, high_v = (
-            quantity.volt(one, field=f"{where}[{place}]") for place, one in enumerate(entry, 1)
-        )
+        ends_v = [-peak_v, peak_v]
     else:
-        low_v = high_v = 0.0
-    if not low_v < 0 < high_v:
+        ends_v = [
+            quantity.volt(one, field=f"{where}[{place}]") for place, one in enumerate(entry, 1)
+        ]
+    if len(ends_v) != 2 or not ends_v[0] < 0 < ends_v[1]:
         raise DesignFileError(
             f"{where} leaves no room for a sine around zero volts",
             where=where,
             expected='a peak above zero such as "10.5 V", or both ends: ["-9 V", "10.5 V"]',
         )
-    return high_v, -low_v
+    return ends_v[1], -ends_v[0]

@@ -11,7 +11,7 @@ from benchlog.design.entries import Reader, optional
 from benchlog.design.file import BudgetFile, LineFile
 from benchlog.design.model import Budget, Line
 from benchlog.errors import DesignFileError
-from benchlog.quantity import Entry
+from benchlog.quantity import Entry, shown
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -75,7 +75,7 @@ def _line(key: str, kind: LineKind, entry: LineFile) -> Line:
     maximum = optional(entry.maximum, kind.read, f"{where}.max")
     if minimum is not None and maximum is not None and minimum > maximum:
         raise DesignFileError(
-            f"{where}: min {entry.minimum!r} is above max {entry.maximum!r}",
+            f"{where}: min {shown(entry.minimum)} is above max {shown(entry.maximum)}",
             where=where,
             expected="min not above max",
         )

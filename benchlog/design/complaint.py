@@ -11,17 +11,11 @@ import msgspec
 from benchlog.design.file import AmplifierFile, DesignFile
 from benchlog.design.keys import hints, item_of, keys, leaves, metas, structs
 from benchlog.errors import DesignFileError
+from benchlog.quantity import shown
 
 _COMPLAINT = re.compile(r"(?P<what>.*?)(?: - at `\$\.?(?P<path>.*)`)?", re.DOTALL)
 _QUOTED = re.compile(r"[`'](.*)[`']", re.DOTALL)
-_KINDS = {
-    "str": "a text",
-    "int": "a whole number",
-    "float": "a number",
-    "bool": "true or false",
-    "object": "a table",
-    "array": "a list",
-}
+_KINDS = {str: "a text", int: "a whole number", float: "a number"}
 
 
 def convert(data: Mapping[str, Any]) -> DesignFile:
@@ -38,9 +32,20 @@ def convert(data: Mapping[str, Any]) -> DesignFile:
 
 def _complaint(error: msgspec.ValidationError, data: Mapping[str, Any]) -> DesignFileError:
     what, path = _parted(str(error))
-    if path.startswith("amplifier[...]"):
-        what, path = _in_amplifiers(data["amplifier"], what)
     steps = _steps(path)
+    try:
+        if steps[:1] == ("amplifier",):
+            return _amplifier_complaint(what, steps, data)
+        return _translated(what, steps, data)
+    except (LookupError, TypeError):
+        # A key with brackets or backticks in it defeats the reading of msgspec's own message.
+        return DesignFileError(str(error), expected="keys of letters, digits, _ and -")
+
+
+def _translated(
+    what: str, steps: tuple[str | int, ...], data: Mapping[str, Any]
+) -> DesignFileError:
+    """Say in our words what msgspec says about the value at a place."""
     quoted = _QUOTED.search(what)
     name = quoted.group(1) if quoted else ""
     if "unknown field" in what:
@@ -66,15 +71,26 @@ def _parted(complaint: str) -> tuple[str, str]:
     return (found["what"], found["path"] or "") if found else (complaint, "")
 
 
-def _in_amplifiers(amplifiers: Mapping[str, Any], what: str) -> tuple[str, str]:
+def _amplifier_complaint(
+    what: str, steps: tuple[str | int, ...], data: Mapping[str, Any]
+) -> DesignFileError:
     """Find the amplifier table that is wrong: msgspec does not name the keys of a mapping."""
-    for name, table in amplifiers.items():
+    tables = data["amplifier"]
+    named = isinstance(tables, Mapping) and not set(tables) & set(keys(AmplifierFile))
+    if not named:
+        return DesignFileError(
+            "the amplifier has no name",
+            where="amplifier",
+            expected="a table for each amplifier, for example [amplifier.main]",
+        )
+    for name, table in tables.items():
         try:
             msgspec.convert(table, AmplifierFile)
         except msgspec.ValidationError as error:
             what, path = _parted(str(error))
-            return what, f"amplifier.{name}.{path}".rstrip(".")
-    return what, "amplifier"
+            steps = ("amplifier", name, *_steps(path))
+            break
+    return _translated(what, steps, data)
 
 
 def _steps(path: str) -> tuple[str | int, ...]:
@@ -84,8 +100,15 @@ def _steps(path: str) -> tuple[str | int, ...]:
 
 def _spoken(steps: tuple[str | int, ...]) -> str:
     """Write a key path as people count: ``stage[1].feedback``."""
-    text = "".join(f"[{step + 1}]" if isinstance(step, int) else f".{step}" for step in steps)
+    text = "".join(
+        f"[{step + 1}]" if isinstance(step, int) else f".{_legible(step)}" for step in steps
+    )
     return text.removeprefix(".")
+
+
+def _legible(key: str) -> str:
+    """Return a key as it may be shown on a terminal."""
+    return key if key.isprintable() and len(key) <= 60 else shown(key)
 
 
 def _unknown_key(name: str, steps: tuple[str | int, ...], data: object) -> DesignFileError:
@@ -103,7 +126,7 @@ def _unknown_word(name: str, steps: tuple[str | int, ...], data: object) -> Desi
     words = _words(steps, data)
     near = difflib.get_close_matches(name, words, n=1)
     return DesignFileError(
-        f"{_spoken(steps)}: {name!r} is not a word for it",
+        f"{_spoken(steps)}: {shown(name)} is not a word for it",
         where=_spoken(steps),
         expected=f"one of: {', '.join(words)}",
         hint=f"did you mean {near[0]!r}?" if near else None,
@@ -139,8 +162,11 @@ def _told(value: object) -> str:
         return "a list" if value else "an empty list"
     if isinstance(value, Mapping):
         return "a table"
-    shown = repr(value)
-    return f"{_KINDS.get(type(value).__name__, 'a date or a time')}: {shown[:40]}"
+    if isinstance(value, bool):
+        return str(value).lower()
+    if isinstance(value, str | int | float):
+        return f"{_KINDS[type(value)]}: {shown(value)}"
+    return f"a date or a time: {value}"
 
 
 def _value_at(steps: tuple[str | int, ...], data: Any) -> object:  # noqa: ANN401 - TOML data

@@ -11,7 +11,7 @@ from benchlog.circuit.preferred import nearest_preferred
 from benchlog.design.file import PartFile
 from benchlog.errors import DesignFileError
 from benchlog.notation import si
-from benchlog.quantity import Entry
+from benchlog.quantity import Entry, shown
 
 T = TypeVar("T")
 PartEntry: TypeAlias = Entry | PartFile
@@ -46,7 +46,7 @@ def read_part(entry: PartEntry, read: Reader, *, field: str) -> ReadPart:
         below, above = nearest_preferred(value, entry.series)
         if value not in {below, above}:
             raise DesignFileError(
-                f"{field}: {entry.value!r} is not in the series {entry.series}",
+                f"{field}: {shown(entry.value)} is not in the series {entry.series}",
                 where=f"{field}.value",
                 expected=f"a value of {entry.series}",
                 hint=f"its neighbours there are {si(below, '')} and {si(above, '')}",

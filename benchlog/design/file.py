@@ -40,7 +40,8 @@ Hertz: TypeAlias = Annotated[
 Volt: TypeAlias = Annotated[str | int | float, Meta(description="a voltage", examples=["12 V"])]
 Level: TypeAlias = Annotated[str, Meta(description="a level", examples=["20 mVpp"])]
 Percent: TypeAlias = Annotated[str, Meta(description="a percentage", examples=["1%"])]
-Words: TypeAlias = Annotated[str, Meta(description="a text", examples=["C"])]
+Name: TypeAlias = Annotated[str, Meta(description="a text", examples=["line preamp"])]
+Revision: TypeAlias = Annotated[str, Meta(description="a text", examples=["C"])]
 AmplifierName: TypeAlias = Annotated[
     str, Meta(description="the name of an [amplifier.NAME] table", examples=["main"])
 ]
@@ -95,7 +96,9 @@ class SummingFile(
     amplifier: AmplifierName
     inputs: list[Ohm]
     feedback: Ohm
-    driven: Annotated[int, Meta(description="which input is driven, from 1", examples=[1])] = 1
+    driven: Annotated[
+        int, Meta(description="the number of an input, from 1", examples=[1], ge=1, le=100)
+    ] = 1
     undriven: Literal["grounded", "open"] = "grounded"
     undriven_source: Ohm | UnsetType = UNSET
     feedback_capacitor: Farad | UnsetType = UNSET
@@ -212,9 +215,12 @@ class SweepFile(Struct, forbid_unknown_fields=True, kw_only=True):
 
     start: Hertz | UnsetType = UNSET
     stop: Hertz | UnsetType = UNSET
-    per_decade: Annotated[int, Meta(description="points per decade", examples=[10])] | UnsetType = (
-        UNSET
-    )
+    per_decade: (
+        Annotated[
+            int, Meta(description="1 to 1000 points per decade", examples=[10], ge=1, le=1000)
+        ]
+        | UnsetType
+    ) = UNSET
     level: (
         Annotated[
             str | list[LevelAboveFile],
@@ -261,9 +267,14 @@ class BudgetFile(Struct, forbid_unknown_fields=True, kw_only=True):
 class DesignFile(Struct, forbid_unknown_fields=True, kw_only=True):
     """A design: the circuit a board is built to, and what it must meet."""
 
-    name: Words
-    revision: Words
-    stage: Annotated[list[StageFile], Meta(description="[[stage]] tables", min_length=1)]
+    name: Name
+    revision: Revision
+    stage: Annotated[
+        list[StageFile],
+        Meta(
+            description="a [[stage]] table for each of 1 to 12 stages", min_length=1, max_length=12
+        ),
+    ]
     budget: BudgetFile
     amplifier: dict[str, AmplifierFile] = {}
     gbw_of: AmplifierName | UnsetType = UNSET

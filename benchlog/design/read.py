@@ -82,9 +82,16 @@ def _content(path: str | Path) -> bytes:
 
 def _tables(text: str) -> dict[str, Any]:
     """Read TOML; some editors put a byte order mark in front, which TOML does not allow."""
+    text = text.removeprefix("\ufeff")
+    if not text.strip():
+        raise DesignFileError(
+            "the file is empty",
+            expected="a design in TOML",
+            hint="`benchlog new DIR` makes one to start from",
+        )
     try:
-        return tomllib.loads(text.removeprefix("\ufeff"))
-    except (tomllib.TOMLDecodeError, RecursionError) as error:
+        return tomllib.loads(text)
+    except (ValueError, RecursionError) as error:
         reason = str(error) if isinstance(error, ValueError) else "nested too deeply"
         raise DesignFileError(
             f"the file is not TOML: {reason}",
