@@ -108,4 +108,4 @@ class Status:
             (OPERATION_BIT, bool(self.operation.event & self.operation.enable)),
         )
         value = sum(weight for weight, raised in summary if raised)
-        return value | MASTER_BIT if value & self.service_enable & ~MASTER_BIT else value
+        return value | MASTER_BIT if value & self.service_enable else value

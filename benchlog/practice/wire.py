@@ -130,8 +130,6 @@ class PracticeWire:
 
     def _answer(self, response: Response) -> None:
         due_s = response.ready_at_s
-        if self._arriving:
-            due_s = max(due_s, self._arriving[-1][0])
         for piece in self._unkindness.spoil(response.text.encode("latin-1") + b"\n"):
             due_s += piece.pause_s
             self._arriving.append((due_s, piece.data))

@@ -244,6 +244,19 @@ def test_what_the_first_stage_clips_the_second_does_not_get() -> None:
     assert 0.8 < levels.output_vrms <= 1.0
 
 
+def test_what_a_stage_loses_is_lost_to_all_that_follow() -> None:
+    """Two stages of -1/2 behind a clipped one leave a quarter of what was clipped."""
+    first = ("non-inverting", {"feedback": 9e3, "ground": 1e3})
+    half = ("inverting", {"feedback": 5e3, "input": 1e4})
+    amplifier = {"gbw": 1e8, "output_swing": 1.0}
+    alone = nominal(parts_list(first, amplifier=amplifier))
+    chain = nominal(parts_list(first, half, half, amplifier=amplifier))
+    clipped = alone.levels(100.0, 1.0, source_ohm=50).output_vrms
+    assert 0.9 < clipped < 1.0
+    quarter = chain.levels(100.0, 1.0, source_ohm=50).output_vrms
+    assert quarter == pytest.approx(clipped / 4, rel=1e-4)
+
+
 def test_noise_is_the_density_over_the_noise_bandwidth() -> None:
     """One pole: e_n x NG x sqrt(pi/2 fc), with what lies beyond 10 MHz cut off."""
     board = nominal(parts_list(("non-inverting", {"feedback": 99e3, "ground": 1e3})))

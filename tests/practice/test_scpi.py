@@ -33,6 +33,7 @@ def meter() -> Instrument:
         ("SOUR:FREQ 2 kHz;VOLT 0.1;:FREQ?;VOLT?", "+2.00000000000E+03;+1.00000000000E-01"),
         ("SOUR:FREQ 2 kHz;*OPC?;FREQ?", "1;+2.00000000000E+03"),
         ("OUTP:LOAD 50;STAT ON;STAT?", "1"),
+        ("VOLT:UNIT VPP;*OPC?;UNIT?", "1;VPP"),
         (";;*OPC?;", "1"),
         ("", None),
         ("\r", None),
@@ -76,6 +77,9 @@ def test_command_error_gives_up_the_rest_of_the_message(source: Instrument) -> N
     assert answer(source, "*OPC?;BOGUS;FREQ 5 kHz;FREQ?") == "1"
     assert answer(source, "FREQ?") == "+1.00000000000E+03"
     assert errors(source) == [-113]
+    assert answer(source, "FREQ 1 V;FREQ 5 kHz;FREQ?") is None
+    assert answer(source, "FREQ?") == "+1.00000000000E+03"
+    assert errors(source) == [-131]
 
 
 def test_execution_error_goes_on_with_the_message(source: Instrument) -> None:

@@ -151,12 +151,23 @@ def test_instrument_answers_one_after_the_other() -> None:
         assert time.monotonic() - started >= 4e-3
 
 
+def test_waiting_holds_up_the_next_message() -> None:
+    """``*WAI`` works across messages: the question behind it is answered after the reading."""
+    with PracticeServer(World()) as server, talking(server, "output meter") as talk:
+        started = time.monotonic()
+        talk.send(b"INIT\n*WAI\n*TST?\n")
+        assert talk.line() == "0"
+        assert time.monotonic() - started >= 4e-3
+
+
 def test_client_that_sends_no_more_is_answered_first() -> None:
     """Closing the sending half, as command-line tools do, loses no answer."""
     with PracticeServer(World()) as server, talking(server, "output meter") as talk:
         talk.send(b"*OPC?\nREAD?\n")
         talk.socket.shutdown(socket.SHUT_WR)
-        assert [talk.line() for _ in range(3)][::2] == ["1", ""]
+        assert talk.line() == "1"
+        assert talk.line().endswith("E-06")
+        assert talk.line() == ""
     with PracticeServer(World()) as server, talking(server) as talk:
         talk.send(b"FREQ 5 kHz\n")
         talk.socket.shutdown(socket.SHUT_WR)
@@ -198,7 +209,8 @@ def test_faults_on_the_wire(kind: str) -> None:
             "overloaded": "+9.900000E+37",
         }
         assert seen == expected[kind]
-        assert (waited_s >= 0.03) == (kind in {"late", "split"})
+        if kind in {"late", "split"}:
+            assert waited_s >= 0.03
 
 
 def test_answers_never_overtake_a_late_one() -> None:

@@ -133,6 +133,16 @@ def test_recovery_throws_the_late_answer_away() -> None:
         assert wire.ask("*OPC?", timeout_s=1.0) == "1"
 
 
+def test_recovery_asks_once_where_once_is_enough() -> None:
+    """What arrived while it waited is not taken for the identity, so nothing is opened anew."""
+    wire = wire_with(Fault(kind="late", delay_s=0.55), Fault(kind="dropped", nth=3))
+    with pytest.raises(LinkTimeout):
+        wire.ask("READ?", timeout_s=0.5)
+    wire.recover()
+    with pytest.raises(LinkTimeout):
+        wire.ask("*OPC?", timeout_s=0.5)
+
+
 @pytest.mark.parametrize(
     ("kind", "answer"),
     [("split", "1"), ("stale", "0"), ("garbled", "\xce"), ("overloaded", "+9.900000E+37")],
