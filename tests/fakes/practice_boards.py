@@ -1,5 +1,10 @@
 """Parts lists written by hand, for tests that want no design file."""
 
+import math
+
+import numpy as np
+
+from benchlog.practice.board import PracticeBoard
 from benchlog.practice.parts import Part, PartsList
 from benchlog.practice.wiring import StageKind
 
@@ -27,6 +32,17 @@ def parts_list(
     }
     kinds = tuple(StageKind(topology=topology, amplifier="main") for topology, _ in stages)
     return PartsList(kinds=kinds, parts=parts)
+
+
+def corner_hz(board: PracticeBoard) -> float:
+    """Return where gain has fallen to half power of its value at 1 mHz, by bisection."""
+    plateau = abs(board.gain(np.array([1e-3]))[0])
+    low, high = 1e-3, 1e9
+    for _ in range(60):
+        middle = math.sqrt(low * high)
+        above = abs(board.gain(np.array([middle]))[0]) > plateau / math.sqrt(2)
+        low, high = (middle, high) if above else (low, middle)
+    return low
 
 
 PREAMP = parts_list(

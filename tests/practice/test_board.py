@@ -15,7 +15,7 @@ import pytest
 from benchlog.curve import ComplexArray, FloatArray
 from benchlog.practice.board import NOISE_V_PER_ROOT_HZ, PracticeBoard
 from benchlog.practice.parts import Part, PartsList
-from tests.fakes.practice_boards import PREAMP, parts_list
+from tests.fakes.practice_boards import PREAMP, corner_hz, parts_list
 
 Impedance: TypeAlias = npt.NDArray[np.complexfloating[Any, Any]]
 
@@ -25,19 +25,6 @@ FREQUENCY_HZ: FloatArray = np.geomspace(1.0, 1e7, 71)
 def nominal(parts: PartsList) -> PracticeBoard:
     """Return a board with nominal parts."""
     return PracticeBoard(parts, spread=False)
-
-
-def corner_hz(board: PracticeBoard, *, start_hz: float = 1.0) -> float:
-    """Return where gain has fallen to half power, by bisection in log frequency."""
-    plateau = abs(board.gain(np.array([start_hz]))[0])
-    low, high = start_hz, 1e9
-    for _ in range(60):
-        middle = math.sqrt(low * high)
-        if abs(board.gain(np.array([middle]))[0]) > plateau / math.sqrt(2):
-            low = middle
-        else:
-            high = middle
-    return low
 
 
 def loop(ideal: complex | Impedance, noise_gain: complex | Impedance) -> ComplexArray:
@@ -198,7 +185,7 @@ def test_finite_open_loop_gain(ideal: float, gain: float, bandwidth_hz: float) -
         stage = ("follower", {})
     board = nominal(parts_list(stage, amplifier=amplifier))
     assert abs(board.gain(np.array([1e-3]))[0]) == pytest.approx(gain, rel=1e-7)
-    assert corner_hz(board, start_hz=1e-3) == pytest.approx(bandwidth_hz, rel=1e-5)
+    assert corner_hz(board) == pytest.approx(bandwidth_hz, rel=1e-5)
 
 
 def test_second_pole_gives_peaking() -> None:
