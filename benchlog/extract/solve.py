@@ -1,0 +1,158 @@
+"""Weighted least squares for many sweeps at once.
+
+Damped Gauss-Newton steps (Levenberg-Marquardt) on arrays of shape (sweeps, points); every sweep
+has its own damping and stops on its own.  A weight of zero pads sweeps of unequal length.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+
+from benchlog.curve import FloatArray
+from benchlog.extract.models.shape import Shape
+
+_MOST_STEPS = 60
+# Parameters are logarithms: this is a relative change far below any uncertainty.
+_STEP_TOLERANCE = 1e-11
+_FALL_TOLERANCE = 1e-14
+# A parameter moves by no more than a factor e in one step.
+_LONGEST_STEP = 1.0
+_FIRST_DAMPING = 1e-3
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Fit:
+    """Fitted parameters of many sweeps.
+
+    Attributes:
+        parameters: Shape (sweeps, parameters).
+        inverse_normal: Inverse of the normal matrix: the covariance where the weights are inverse
+            variances, shape (sweeps, parameters, parameters).
+        derivatives: Of ln gain by the parameters at the fit, shape (sweeps, points, parameters).
+        residuals: Measured minus fitted ln gain, zero where the weight is zero.
+        chi2: Weighted sum of squares, shape (sweeps,).
+        count: Points that count, shape (sweeps,).
+        converged: Whether the last step was negligible, shape (sweeps,).
+    """
+
+    parameters: FloatArray
+    inverse_normal: FloatArray
+    derivatives: FloatArray
+    residuals: FloatArray
+    chi2: FloatArray
+    count: npt.NDArray[np.int64]
+    converged: npt.NDArray[np.bool_]
+
+
+def solve(
+    shape: Shape,
+    ln_frequency: FloatArray,
+    ln_gain: FloatArray,
+    *,
+    weight: FloatArray,
+    start: FloatArray | None = None,
+) -> Fit:
+    """Fit one shape to many sweeps.
+
+    Args:
+        shape: What to fit.
+        ln_frequency: Shape (sweeps, points); finite where the weight is above zero.
+        ln_gain: Same shape.
+        weight: Inverse variance of ln gain, or 1 where it is not known, shape (sweeps, points).
+        start: First guess, shape (sweeps, parameters); the shape's own by default.
+
+    Returns:
+        The fits; where one did not converge the flag says so.
+    """
+    used = (weight > 0).astype(float)
+    x = np.where(weight > 0, ln_frequency, 0.0)
+    y = np.where(weight > 0, ln_gain, 0.0)
+    state = _State(shape, x, y, weight, shape.start(x, y, used) if start is None else start)
+    for _ in range(_MOST_STEPS):
+        if not state.step():
+            break
+    return state.fit()
+
+
+class _State:
+    """Where each sweep's search stands."""
+
+    def __init__(  # noqa: PLR0917 - the arrays of one problem
+        self, shape: Shape, x: FloatArray, y: FloatArray, weight: FloatArray, start: FloatArray
+    ) -> None:
+        self.shape, self.x, self.y, self.weight = shape, x, y, weight
+        self.parameters = start.copy()
+        self.damping = np.full(len(start), _FIRST_DAMPING)
+        self.moving = np.ones(len(start), np.bool_)
+        self.residuals, self.derivatives, self.chi2 = self._at(np.arange(len(start)), start)
+
+    def step(self) -> bool:
+        """Try one step of every sweep that still moves; False once none does."""
+        rows = np.flatnonzero(self.moving)
+        if rows.size == 0:
+            return False
+        weighted = self.derivatives[rows] * self.weight[rows, :, None]
+        normal = np.swapaxes(weighted, 1, 2) @ self.derivatives[rows]
+        slope = (weighted * self.residuals[rows, :, None]).sum(axis=1)
+        diagonal = np.einsum("spp->sp", normal)
+        damped = normal.copy()
+        np.einsum("spp->sp", damped)[:] += (
+            self.damping[rows, None] * diagonal + np.finfo(float).tiny ** 0.5
+        )
+        move = np.linalg.solve(damped, slope[:, :, None])[:, :, 0]
+        longest = np.abs(move).max(axis=1, keepdims=True)
+        move *= np.minimum(1.0, _LONGEST_STEP / np.maximum(longest, 1e-300))
+        self._judge(rows, move)
+        return True
+
+    def _judge(self, rows: npt.NDArray[np.int64], move: FloatArray) -> None:
+        """Take the steps that go down, damp the others more."""
+        tried = self.parameters[rows] + move
+        residuals, derivatives, chi2 = self._at(rows, tried)
+        before = self.chi2[rows]
+        better = chi2 <= before
+        taken = rows[better]
+        self.parameters[taken] = tried[better]
+        self.residuals[taken] = residuals[better]
+        self.derivatives[taken] = derivatives[better]
+        self.chi2[taken] = chi2[better]
+        self.damping[rows] = np.where(
+            better, self.damping[rows] * 0.1, np.maximum(self.damping[rows], 1e-9) * 10.0
+        )
+        small = np.abs(move).max(axis=1) < _STEP_TOLERANCE
+        flat = better & (before - chi2 <= _FALL_TOLERANCE * before)
+        stuck = self.damping[rows] > 1e12
+        self.moving[rows[small | flat | stuck]] = False
+
+    def _at(
+        self, rows: npt.NDArray[np.int64], parameters: FloatArray
+    ) -> tuple[FloatArray, FloatArray, FloatArray]:
+        values, derivatives = self.shape.evaluate(parameters, self.x[rows])
+        residuals = np.where(self.weight[rows] > 0, self.y[rows] - values, 0.0)
+        return residuals, derivatives, (self.weight[rows] * residuals**2).sum(axis=1)
+
+    def fit(self) -> Fit:
+        normal = np.swapaxes(self.derivatives * self.weight[:, :, None], 1, 2) @ self.derivatives
+        return Fit(
+            parameters=self.parameters,
+            inverse_normal=_inverse(normal),
+            derivatives=self.derivatives,
+            residuals=self.residuals,
+            chi2=self.chi2,
+            count=(self.weight > 0).sum(axis=1),
+            converged=~self.moving,
+        )
+
+
+def _inverse(normal: FloatArray) -> FloatArray:
+    """Invert, after scaling the diagonal to one; what has no information gets infinity."""
+    scale = np.sqrt(np.einsum("spp->sp", normal))
+    known = (scale > 0).all(axis=1)
+    safe = np.where(scale > 0, scale, 1.0)
+    scaled = normal / safe[:, :, None] / safe[:, None, :]
+    known &= np.abs(np.linalg.det(scaled)) > 1e-14
+    scaled[~known] = np.eye(normal.shape[1])
+    inverse: FloatArray = np.linalg.inv(scaled) / safe[:, :, None] / safe[:, None, :]
+    inverse[~known] = np.inf
+    return inverse
