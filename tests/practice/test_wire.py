@@ -2,6 +2,7 @@
 
 import pytest
 
+from benchlog.bench.wire import Wire
 from benchlog.errors import IdentityError, LinkLost, LinkRefused, LinkTimeout, Misuse
 from benchlog.practice.board import PracticeBoard
 from benchlog.practice.faults import Fault, FaultKind
@@ -34,6 +35,13 @@ def test_a_whole_measurement_takes_no_time() -> None:
     gain = float(output.ask("READ?", timeout_s=1)) / float(before.ask("READ?", timeout_s=1))
     assert gain == pytest.approx(48.0, rel=1e-3)
     assert 0.1 < wires.clock.now_s() < 0.12
+
+
+def test_wire_has_the_face_of_every_wire() -> None:
+    """It shows what a link to a real instrument shows (the type checker sees to the rest)."""
+    wire: Wire = PracticeWires(World()).open("source")
+    assert (wire.address, wire.dirty) == ("practice::source", False)
+    assert wire.identity == wire.ask("*IDN?", timeout_s=1.0)
 
 
 def test_time_passes_while_the_instrument_is_busy() -> None:
