@@ -1,14 +1,18 @@
 """The practice instruments in the same process, with a clock that is a number."""
 
+from typing import TYPE_CHECKING
+
 import pytest
 
-from benchlog.bench.wire import Wire
 from benchlog.errors import IdentityError, LinkLost, LinkRefused, LinkTimeout, Misuse
 from benchlog.practice.board import PracticeBoard
 from benchlog.practice.faults import Fault, FaultKind
 from benchlog.practice.wire import PracticeWire, PracticeWires, VirtualClock
 from benchlog.practice.world import PERFECT, World
 from tests.fakes.practice_boards import PREAMP
+
+if TYPE_CHECKING:
+    from benchlog.bench.wire import Wire
 
 
 def wire_with(*faults: Fault) -> PracticeWire:
@@ -40,6 +44,7 @@ def test_a_whole_measurement_takes_no_time() -> None:
 def test_wire_has_the_face_of_every_wire() -> None:
     """It shows what a link to a real instrument shows (the type checker sees to the rest)."""
     wire: Wire = PracticeWires(World()).open("source")
+    assert isinstance(wire, PracticeWire)
     assert (wire.address, wire.dirty) == ("practice::source", False)
     assert wire.identity == wire.ask("*IDN?", timeout_s=1.0)
 
