@@ -1,0 +1,67 @@
+"""A reply that comes too late, over a real socket, never lands on another frequency."""
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from benchlog.bench.runner import run_sweep
+from benchlog.practice.bench import Role
+from benchlog.practice.faults import Fault
+from benchlog.practice.server import PracticeServer
+from benchlog.records import Point
+from benchlog.sweep.schedule import log_spaced, spaced_schedule
+from tests.fakes.practice_bench import NOMINAL, bench_over_tcp, faults_at, perfect_world
+
+SCHEDULE = spaced_schedule(log_spaced(2e4, 2e6, 2), 0.007)
+TIMEOUT_S = 0.08
+GAINS = np.abs(NOMINAL.gain(np.array([step.frequency_hz for step in SCHEDULE.steps])))
+
+
+WHILE_RECOVERING_S, AFTER_REOPENING_S = 0.12, 0.3
+
+
+@pytest.mark.parametrize(
+    ("role", "delay_s"),
+    [
+        ("source", WHILE_RECOVERING_S),
+        ("input meter", WHILE_RECOVERING_S),
+        ("output meter", WHILE_RECOVERING_S),
+        ("output meter", AFTER_REOPENING_S),
+    ],
+)
+def test_late_replies(tmp_path: Path, role: Role, delay_s: float) -> None:
+    """Two replies come late; each point is measured again and has its own frequency's gain."""
+    faults = [Fault(kind="late", nth=nth, delay_s=delay_s) for nth in (6, 15)]
+    kept = list[Point]()
+    world = perfect_world()
+    with (
+        PracticeServer(world, faults=faults_at(role, *faults)) as server,
+        bench_over_tcp(tmp_path, server, timeout_s=TIMEOUT_S) as bench,
+    ):
+        result = run_sweep(bench, SCHEDULE, keep=kept.append)
+        assert not world.drive.on
+
+    assert (result.state, result.source_off) == ("complete", True)
+    assert 1 <= len(result.recoveries) <= 2
+    assert all("no answer" in recovery.why for recovery in result.recoveries)
+    assert [point.gain for point in kept] == pytest.approx(GAINS, rel=1e-4)
+    assert sum(point.attempts - 1 for point in kept) == len(result.recoveries)
+
+
+def test_a_meter_that_is_always_late(tmp_path: Path) -> None:
+    """What was kept before it became late is right; the sweep fails, the source is off."""
+    fault = Fault(kind="late", nth=6, for_good=True, delay_s=0.12)
+    kept = list[Point]()
+    world = perfect_world()
+    with (
+        PracticeServer(world, faults=faults_at("output meter", fault)) as server,
+        bench_over_tcp(tmp_path, server, timeout_s=TIMEOUT_S) as bench,
+    ):
+        result = run_sweep(bench, SCHEDULE, keep=kept.append, retries=1)
+        assert not world.drive.on
+
+    assert (result.state, result.source_off) == ("failed", True)
+    assert result.error is not None
+    assert 1 <= len(kept) < len(SCHEDULE.steps)
+    assert [point.gain for point in kept] == pytest.approx(GAINS[: len(kept)], rel=1e-4)
