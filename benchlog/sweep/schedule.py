@@ -97,6 +97,16 @@ class Schedule:
         known = [(step.output_vrms, step) for step in self.steps if step.output_vrms is not None]
         return max(known, key=lambda pair: pair[0])[1] if known else None
 
+    def settings(self) -> dict[str, object]:
+        """Return what is needed to make this schedule again, for a sweep's record as JSON."""
+        return {
+            "frequency_hz": [step.frequency_hz for step in self.steps],
+            "level_vrms": [step.level_vrms for step in self.steps],
+            "attenuation": self.attenuation,
+            "meter_before_attenuator": self.meter_before_attenuator,
+            "notes": list(self.notes),
+        }
+
     def statement(self) -> str:
         """Say what will be applied, before anything is switched on."""
         text = f"The board's input will see at most {_level(self.highest_input_vrms)}"

@@ -1,6 +1,7 @@
 """Frequencies and levels of a schedule."""
 
 import itertools
+import json
 import math
 
 import pytest
@@ -171,3 +172,21 @@ def test_what_will_be_applied_is_said(
     )
 
     assert Schedule(steps=steps, attenuation=attenuation).statement() == statement
+
+
+def test_settings_make_the_schedule_again() -> None:
+    """What a sweep's record holds is enough to program the same points."""
+    schedule = spaced_schedule(log_spaced(10.0, 1e5, 3), 0.01, attenuation=10.0)
+
+    settings = json.loads(json.dumps(schedule.settings()))
+
+    steps = zip(settings["frequency_hz"], settings["level_vrms"], strict=True)
+    assert schedule == Schedule(
+        steps=tuple(
+            Step(position=place, frequency_hz=frequency_hz, level_vrms=level_vrms)
+            for place, (frequency_hz, level_vrms) in enumerate(steps)
+        ),
+        attenuation=settings["attenuation"],
+        meter_before_attenuator=settings["meter_before_attenuator"],
+        notes=tuple(settings["notes"]),
+    )
