@@ -2,6 +2,7 @@
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from itertools import accumulate
 
 from benchlog.bench.faces import Role, SweepBench, meters_of
 from benchlog.bench.stop import StopFlag
@@ -89,6 +90,7 @@ class Performer:
         self._progress = progress
         self._stop = stop
         self._model = time_model(bench)
+        self._measuring_left_s = _left([self._model.measuring_s(f) for f in schedule.frequencies()])
         self._began_s = bench.clock.now_s()
 
     def perform(self, action: Action) -> Event:
@@ -184,13 +186,19 @@ class Performer:
     ) -> None:
         if self._progress is None:
             return
-        kept = len(self.points)
+        kept, count = len(self.points), len(self._schedule.steps)
+        overhead_s = self._model.overhead_s * (count - kept)
         progress = Progress(
             kept=kept,
-            count=len(self._schedule.steps),
+            count=count,
             frequency_hz=frequency_hz,
-            seconds_left=self._model.seconds_left(self._schedule.steps[kept:]),
+            seconds_left=self._measuring_left_s[kept] + overhead_s,
             point=point,
             trouble=trouble,
         )
         self._progress(progress)
+
+
+def _left(each_s: list[float]) -> list[float]:
+    """Return what is left before each of some durations, and after the last."""
+    return [*accumulate(reversed(each_s), initial=0.0)][::-1]

@@ -97,10 +97,14 @@ class Schedule:
         known = [(step.output_vrms, step) for step in self.steps if step.output_vrms is not None]
         return max(known, key=lambda pair: pair[0])[1] if known else None
 
+    def frequencies(self) -> tuple[float, ...]:
+        """Return the frequencies in the order in which they are measured, hertz."""
+        return tuple(step.frequency_hz for step in self.steps)
+
     def settings(self) -> dict[str, object]:
         """Return what is needed to make this schedule again, for a sweep's record as JSON."""
         return {
-            "frequency_hz": [step.frequency_hz for step in self.steps],
+            "frequency_hz": list(self.frequencies()),
             "level_vrms": [step.level_vrms for step in self.steps],
             "attenuation": self.attenuation,
             "meter_before_attenuator": self.meter_before_attenuator,

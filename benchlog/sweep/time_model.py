@@ -40,9 +40,13 @@ class TimeModel:
     reading_s: SecondsAt
     overhead_s: float = 0.02
 
+    def measuring_s(self, frequency_hz: float) -> float:
+        """Return what settling and reading take at this frequency, without the overhead."""
+        return self.settle_s(frequency_hz) + self.reading_s(frequency_hz)
+
     def seconds(self, frequency_hz: float) -> float:
         """Return what one point at this frequency takes, seconds."""
-        return self.settle_s(frequency_hz) + self.reading_s(frequency_hz) + self.overhead_s
+        return self.measuring_s(frequency_hz) + self.overhead_s
 
     def seconds_left(self, steps: Iterable[Step]) -> float:
         """Return what all these steps take, seconds."""
@@ -50,6 +54,6 @@ class TimeModel:
 
     def learned(self, frequency_hz: float, took_s: float) -> "TimeModel":
         """Return the model after a point took so many seconds at this frequency."""
-        seen_s = took_s - self.settle_s(frequency_hz) - self.reading_s(frequency_hz)
+        seen_s = took_s - self.measuring_s(frequency_hz)
         overhead_s = self.overhead_s + LEARN * (max(seen_s, 0.0) - self.overhead_s)
         return replace(self, overhead_s=overhead_s)
