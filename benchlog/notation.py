@@ -106,9 +106,6 @@ def _exponent(size: float, unit: str) -> int:
     if unit in _UNPREFIXED or size == 0:
         return 0
     exponent = 3 * math.floor(math.log10(size) / 3)
-    # log10 of a number just below a power of ten may round up to it, and the reverse.
-    if size >= 10.0 ** (exponent + 3):
-        exponent += 3
     return min(max(exponent, min(_PREFIXES)), max(_PREFIXES))
 
 

@@ -21,8 +21,8 @@ class Nominal:
 
     Attributes:
         gain, gain_db: Plateau: gain at zero frequency, or between the corners.
-        corner_hz: Last downward crossing of plateau/sqrt(2).
-        lower_corner_hz: First upward crossing of plateau/sqrt(2).
+        corner_hz: Last downward crossing of plateau/sqrt(2), where the response stays below it.
+        lower_corner_hz: First upward crossing of plateau/sqrt(2), where it comes from below.
         noise_gain: Of the stage whose GBW is the figure.
         gbw_hz: Typical, of that amplifier.
         peaking_db: How far the response rises above the plateau; 0 when it does not.
@@ -53,15 +53,15 @@ def nominal_figures(chain: Chain, *, source_ohm: float = 0.0) -> Nominal:
 
     on_grid = relative(_GRID_HZ)
     above = on_grid >= HALF_POWER
-    falls = np.flatnonzero(above[:-1] & ~above[1:])
-    rises = np.flatnonzero(~above[:-1] & above[1:])
+    crossings = np.flatnonzero(above[:-1] != above[1:])
+    has_upper, has_lower = crossings.size > 0 and not above[-1], crossings.size > 0 and not above[0]
     peaking_hz, height = _highest(relative, on_grid)
     has_amplifier = bool(chain.figure_stages)
     return Nominal(
         gain=plateau,
         gain_db=decibels(plateau),
-        corner_hz=_crossing(relative, int(falls[-1])) if falls.size else None,
-        lower_corner_hz=_crossing(relative, int(rises[0])) if rises.size else None,
+        corner_hz=_crossing(relative, int(crossings[-1])) if has_upper else None,
+        lower_corner_hz=_crossing(relative, int(crossings[0])) if has_lower else None,
         noise_gain=chain.noise_gain if has_amplifier else None,
         gbw_hz=chain.gbw_hz if has_amplifier else None,
         peaking_db=max(0.0, decibels(height)) if peaking_hz is not None else 0.0,

@@ -87,6 +87,24 @@ def test_with_peaking_the_corner_is_the_last_crossing_below_the_plateau() -> Non
     assert found.corner_hz == pytest.approx(expected_hz, rel=1e-9)
 
 
+def test_a_dip_and_a_hump_move_neither_corner_inwards() -> None:
+    """A shelf falls below plateau/sqrt(2), a peak above it brings the gain back, then it falls."""
+    shelf = NonInverting(feedback_ohm=10e3, ground_ohm=10e3, feedback_capacitor_f=1.6e-9)
+    fast = Amplifier(gbw_hz=1e9, name="fast")
+    peaky = Amplifier(gbw_hz=4e6, second_pole_hz=250e3, name="peaky")
+    chain = Chain(((shelf, fast), (Follower(), peaky)))
+    dip, hump = np.abs(chain.response(np.array([100e3, 1e6])))
+    assert dip < 2 * math.sqrt(0.5) < hump
+    found = nominal_figures(chain)
+    assert found.corner_hz == pytest.approx(1.25e6, rel=0.1)
+    assert found.lower_corner_hz is None
+
+    coupled = Follower(bias_ohm=10e3, coupling_f=1 / (2 * math.pi * 10e3 * 100.0))
+    found = nominal_figures(Chain(((coupled, fast), *chain.stages)))
+    assert found.lower_corner_hz == pytest.approx(100.0, rel=0.01)
+    assert found.corner_hz == pytest.approx(1.25e6, rel=0.1)
+
+
 def test_a_plain_divider_has_no_corner_at_all() -> None:
     """Resistors alone are flat everywhere."""
     found = nominal_figures(Chain(((Divider(series_ohm=1e3, shunt_ohm=1e3), None),)))

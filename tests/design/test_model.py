@@ -100,6 +100,12 @@ def test_the_example_meets_its_own_budget() -> None:
     design = parse_design(EXAMPLE_DESIGN, where="example")
     found = nominal_figures(design.chain())
     assert design.budget.rule == "four-state"
+    assert [line.figure for line in design.budget.lines] == [
+        "gain_db",
+        "corner_hz",
+        "gbw_hz",
+        "peaking_db",
+    ]
     assert found.gain_db == pytest.approx(33.62, abs=0.005)
     assert found.corner_hz == pytest.approx(62.5e3, rel=1e-3)
     for line in design.budget.lines:
@@ -262,6 +268,7 @@ def test_budget_lines_keep_key_unit_and_what_differs() -> None:
             "[budget]\nguard = 0.5",
             'gain = { min = "0.99", max = 1.01, rule = "simple" }',
             'corner = { min = "1 MHz", guard = 2 }',
+            'gbw = { min = "3 MHz", max = "3 MHz" }',
             'peaking = { max = "1 dB" }',
         )
     )
@@ -270,6 +277,7 @@ def test_budget_lines_keep_key_unit_and_what_differs() -> None:
     assert budget.lines == (
         Line(figure="gain", key="gain", minimum=0.99, maximum=1.01, unit="V/V", rule="simple"),
         Line(figure="corner_hz", key="corner", minimum=1e6, maximum=None, unit="Hz", guard=2.0),
+        Line(figure="gbw_hz", key="gbw", minimum=3e6, maximum=3e6, unit="Hz"),
         Line(figure="peaking_db", key="peaking", minimum=None, maximum=1.0, unit="dB"),
     )
     as_data = json.loads(budget.text())
