@@ -55,7 +55,7 @@ def si(value: SupportsFloat, unit: str, digits: int = 4) -> str:
 def plain(value: SupportsFloat, digits: int = 4) -> str:
     """Write a number without prefix, with at most ``digits`` significant digits: ``"46.2"``.
 
-    Digits left of the point are never dropped; powers of ten are used only past 15 places.
+    1234567 becomes ``"1235000"``; powers of ten are used only past 15 places.
     """
     value = float(value)
     if math.isnan(value):

@@ -77,7 +77,14 @@ def test_prefix_suits_the_size(value: float, unit: str, expected: str) -> None:
 
 @pytest.mark.parametrize(
     ("value", "expected"),
-    [(46.2, "46.2"), (46.23456, "46.23"), (1234567, "1235000"), (0, "0"), (1e-20, "1.000e-20")],
+    [
+        (46.2, "46.2"),
+        (46.23456, "46.23"),
+        (1234567, "1235000"),
+        (0, "0"),
+        (1e-20, "1.000e-20"),
+        (math.nan, "no value"),
+    ],
 )
 def test_plain_keeps_significant_digits(value: float, expected: str) -> None:
     """No prefix, no trailing zeros."""

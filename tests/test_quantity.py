@@ -103,6 +103,7 @@ REFUSED: list[tuple[Parser, object, str, str | None]] = [
     (quantity.hertz, "5 parsec", "'5 parsec' has an unknown unit", None),
     (quantity.hertz, "1e3k", "'1e3k' has an unknown unit", None),
     (quantity.hertz, "1 kHz 2", "'1 kHz 2' has an unknown unit", None),
+    (quantity.hertz, "5/", "'5/' has an unknown unit", None),
     (quantity.hertz, "", "'' is empty", None),
     (quantity.hertz, "  ", "'  ' is empty", None),
     (quantity.hertz, "Hz", "'Hz' does not begin with a number", None),

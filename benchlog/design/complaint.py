@@ -35,7 +35,7 @@ def _complaint(error: msgspec.ValidationError, data: Mapping[str, Any]) -> Desig
     steps = _steps(path)
     try:
         if steps[:1] == ("amplifier",):
-            return _amplifier_complaint(what, steps, data)
+            return _amplifier_complaint(data)
         return _translated(what, steps, data)
     except (LookupError, TypeError):
         # A key with brackets or backticks in it defeats the reading of msgspec's own message.
@@ -71,26 +71,21 @@ def _parted(complaint: str) -> tuple[str, str]:
     return (found["what"], found["path"] or "") if found else (complaint, "")
 
 
-def _amplifier_complaint(
-    what: str, steps: tuple[str | int, ...], data: Mapping[str, Any]
-) -> DesignFileError:
+def _amplifier_complaint(data: Mapping[str, Any]) -> DesignFileError:
     """Find the amplifier table that is wrong: msgspec does not name the keys of a mapping."""
     tables = data["amplifier"]
     named = isinstance(tables, Mapping) and not set(tables) & set(keys(AmplifierFile))
-    if not named:
-        return DesignFileError(
-            "the amplifier has no name",
-            where="amplifier",
-            expected="a table for each amplifier, for example [amplifier.main]",
-        )
-    for name, table in tables.items():
+    for name, table in tables.items() if named else ():
         try:
             msgspec.convert(table, AmplifierFile)
         except msgspec.ValidationError as error:
             what, path = _parted(str(error))
-            steps = ("amplifier", name, *_steps(path))
-            break
-    return _translated(what, steps, data)
+            return _translated(what, ("amplifier", name, *_steps(path)), data)
+    return DesignFileError(
+        "the amplifier has no name",
+        where="amplifier",
+        expected="a table for each amplifier, for example [amplifier.main]",
+    )
 
 
 def _steps(path: str) -> tuple[str | int, ...]:

@@ -1,8 +1,7 @@
 """Read single entries of a design file: parts with their tolerance, and optional quantities."""
 
-from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Protocol, TypeAlias, TypeVar
+from typing import Protocol, TypeAlias
 
 from msgspec import UNSET, UnsetType
 
@@ -13,7 +12,6 @@ from benchlog.errors import DesignFileError
 from benchlog.notation import si
 from benchlog.quantity import Entry, shown
 
-T = TypeVar("T")
 PartEntry: TypeAlias = Entry | PartFile
 
 
@@ -59,8 +57,3 @@ def read_part(entry: PartEntry, read: Reader, *, field: str) -> ReadPart:
 def optional(entry: Entry | UnsetType, read: Reader, field: str) -> float | None:
     """Read a quantity that may be left out."""
     return None if isinstance(entry, UnsetType) else read(entry, field=field)
-
-
-def given(value: T | UnsetType, otherwise: Callable[[], T]) -> T:
-    """Return a value, or what holds when it was left out."""
-    return otherwise() if isinstance(value, UnsetType) else value

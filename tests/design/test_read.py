@@ -37,6 +37,26 @@ def test_text_and_hash_are_those_of_the_file(tmp_path: Path, content: bytes) -> 
 
 
 @pytest.mark.parametrize(
+    ("text", "where", "what", "expected"),
+    [
+        ("[[stage]]", "stage[1].topology", "stage[1].topology is missing", "one of: follower, "),
+        ("stage = [3]", "stage[1]", "stage[1] is a whole number: 3", "a table with the keys "),
+        ("stage = []", "stage", "stage is an empty list", "a [[stage]] table for each"),
+        ("amplifier = 3", "amplifier", "the amplifier has no name", "a table for each amplifier"),
+        ("budget = 3", "budget", "budget is a whole number: 3", "a table with the keys rule, "),
+        ("", "name", "name is missing", "a text, for example"),
+    ],
+)
+def test_tables_that_are_none(text: str, where: str, what: str, expected: str) -> None:
+    """What stands where a table belongs; a comment alone lacks everything."""
+    with pytest.raises(DesignFileError) as refused:
+        parse_design(f"# a comment\n{text}", where="test.toml")
+    assert refused.value.where == f"test.toml: {where}"
+    assert refused.value.what == what
+    assert (refused.value.expected or "").startswith(expected)
+
+
+@pytest.mark.parametrize(
     ("content", "what", "where"),
     [
         (b"", "the file is empty", ""),

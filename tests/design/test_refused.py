@@ -376,6 +376,14 @@ CASES: dict[str, tuple[str, str, str, str, str | None, str | None]] = {
         "one of: simple, guarded, four-state, guarded-rejection",
         "did you mean 'four-state'?",
     ),
+    "rule is a number": (
+        '"four-state"',
+        "4",
+        "budget.rule",
+        "budget.rule is a whole number: 4",
+        "one of: simple, guarded, four-state, guarded-rejection",
+        None,
+    ),
     "negative guard": (
         CORNER,
         'corner = { min = "40 kHz", guard = -1 }',
