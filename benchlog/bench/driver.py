@@ -9,10 +9,11 @@ from benchlog.bench.message import Message, NumberForm
 from benchlog.bench.reply import NumberGrammar
 from benchlog.records import Term
 
-# What a driver of each role may say, with the fields of each message; the starred ones it must.
+# What a driver of each role is asked for, with the fields of each message.
 SOURCE_MESSAGES: Mapping[str, frozenset[str]] = {
     "prepare": frozenset(),
     "set_load": frozenset({"load_ohm"}),
+    "set_high_impedance": frozenset(),
     "set_point": frozenset({"frequency_hz", "level"}),
     "switch_on": frozenset(),
     "switch_off": frozenset(),
@@ -24,7 +25,7 @@ METER_MESSAGES: Mapping[str, frozenset[str]] = {
     "error": frozenset(),
 }
 MESSAGES = {"source": SOURCE_MESSAGES, "meter": METER_MESSAGES}
-OPTIONAL = frozenset({"set_load", "error"})
+OPTIONAL = frozenset({"set_load", "set_high_impedance", "error"})
 
 _PER_VRMS = {"Vrms": 1.0, "Vpk": math.sqrt(2.0), "Vpp": math.sqrt(8.0)}
 

@@ -33,6 +33,7 @@ BACKEND = "@py"
 _QUIET_S = 0.05
 # A flood that never ends must not keep a recovery going for ever.
 _MOST_DRAINED = 1000
+_PEEKED_BYTES = 4096
 _PADDING = "\r\n\0 "
 _LOST = {
     StatusCode.error_connection_lost,
@@ -127,6 +128,14 @@ class VisaWire:
             raise Misuse(f"the link to {self.address} is dirty: recover it first")
         # Set before anything moves: an interrupt at any moment must find it set.
         self.dirty = True
+        unasked = self._transport.unread()
+        if unasked.strip(_PADDING):
+            raise ReplyError(
+                "an answer came that nobody asked for: the instrument is out of step",
+                where=self.address,
+                raw=unasked,
+                hint="if it happens again, ask the instrument's maker; the link is cleaned now",
+            )
         yield
         self.dirty = False
 
@@ -228,19 +237,33 @@ class _Transport:
             hint="check its power and its cable",
         )
 
+    def unread(self) -> str:
+        """Return what has arrived and was not read; empty where the transport cannot tell."""
+        pending = bytes(getattr(self._session(), "_pending_buffer", b""))
+        return (pending + (self._peeked() or b"")).decode("latin-1")
+
     def _peer_is_gone(self) -> bool:
         """Look whether the far end closed: pyvisa-py reports that as a timeout."""
-        session = cast("Any", self._resource).session
-        sessions = getattr(cast("Any", self._resource).visalib, "sessions", {})
-        wire = getattr(sessions.get(session), "interface", None)
+        return self._peeked() == b""
+
+    def _peeked(self) -> bytes | None:
+        """Look at what a socket holds: nothing is None, the end of the stream is empty bytes."""
+        wire = getattr(self._session(), "interface", None)
         if not isinstance(wire, socket.socket):
-            return False
+            return None
         try:
-            return wire.recv(1, socket.MSG_PEEK | socket.MSG_DONTWAIT) == b""
+            return wire.recv(_PEEKED_BYTES, socket.MSG_PEEK | socket.MSG_DONTWAIT)
         except BlockingIOError:
-            return False
+            return None
         except OSError:
-            return True
+            return b""
+
+    def _session(self) -> object:
+        """Return pyvisa-py's own session object; other backends have none."""
+        if self._resource is None:
+            return None
+        library = cast("Any", self._resource).visalib
+        return getattr(library, "sessions", {}).get(cast("Any", self._resource).session)
 
 
 @cache

@@ -1,5 +1,7 @@
 """The roles on a bench: what a sweep may ask of a source and of a meter."""
 
+import math
+
 from benchlog.bench.dialogue import Dialogue
 from benchlog.bench.driver import Driver
 from benchlog.bench.wire import Wire
@@ -13,7 +15,8 @@ class Source:
     Args:
         wire: An open link to it.
         driver: How to talk to it.
-        load_ohm: What its display is to count with; None leaves it as it is.
+        load_ohm: What its display is to count with, infinity for high impedance; None leaves it
+            as it is.
         role: Its name in messages.
     """
 
@@ -36,7 +39,9 @@ class Source:
     def prepare(self) -> None:
         """Bring it to a known state, the output off, and prove that it took the commands."""
         self._dialogue.order("prepare")
-        if self._load_ohm is not None:
+        if self._load_ohm is not None and math.isinf(self._load_ohm):
+            self._dialogue.order("set_high_impedance")
+        elif self._load_ohm is not None:
             self._dialogue.order("set_load", load_ohm=self._load_ohm)
         self._dialogue.check_errors()
 

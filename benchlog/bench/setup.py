@@ -23,6 +23,7 @@ from benchlog.tables import FileKind
 
 # What the practice bench calls its maker; nothing that says so may ever pass for a measurement.
 PRACTICE_MAKER = "benchlog practice"
+HIGH_IMPEDANCE = "high impedance"
 _NEPER_DB = 20.0 / math.log(10.0)
 
 KIND = FileKind(
@@ -65,7 +66,7 @@ class BenchSetup:
         max_level_vrms: Ceiling for the level set at the source.
         source, output_meter, input_meter: The instruments.
         source_ohm: Output resistance of the source.
-        load_ohm: What the source's display is to count with.
+        load_ohm: What the source's display is to count with; infinity is high impedance.
     """
 
     text: str
@@ -259,7 +260,7 @@ def _setup(file: BenchTables, text: str, *, folder: Path) -> BenchSetup:
         if file.input_meter is None
         else _place(file.input_meter, "input meter", wanted="meter", folder=folder),
         source_ohm=ohm(source.impedance, field="source.impedance", zero_ok=True),
-        load_ohm=None if source.load is None else ohm(source.load, field="source.load"),
+        load_ohm=_load_ohm(source),
         attenuator=_attenuator(source),
     )
 
@@ -273,12 +274,14 @@ def _place(table: SourceTable | MeterTable, role: str, *, wanted: str, folder: P
             where=f"{key}.driver",
             expected=f"a driver for a {wanted}",
         )
-    if isinstance(table, SourceTable) and table.load and "set_load" not in driver.messages:
-        raise BenchFileError(
-            f"the driver {table.driver!r} cannot set a load",
-            where=f"{key}.load",
-            expected="no load, or a driver with a set_load message",
-        )
+    if isinstance(table, SourceTable) and table.load:
+        wants = "set_high_impedance" if table.load == HIGH_IMPEDANCE else "set_load"
+        if wants not in driver.messages:
+            raise BenchFileError(
+                f"the driver {table.driver!r} cannot set this load",
+                where=f"{key}.load",
+                expected=f"no load, or a driver with a {wants} message",
+            )
     due = table.calibration_due
     return Place(
         role=role,
@@ -287,6 +290,12 @@ def _place(table: SourceTable | MeterTable, role: str, *, wanted: str, folder: P
         identity=table.identity,
         calibration_due=None if due is None else due.isoformat(),
     )
+
+
+def _load_ohm(source: SourceTable) -> float | None:
+    if source.load is None:
+        return None
+    return math.inf if source.load == HIGH_IMPEDANCE else ohm(source.load, field="source.load")
 
 
 def _attenuator(source: SourceTable) -> Attenuator:

@@ -47,7 +47,9 @@ class SourceTable(_Table, frozen=True, kw_only=True):
     identity: Text | None = None
     impedance: Annotated[Quantity, Meta(description="a resistance", examples=["50 ohm"])] = "50 ohm"
     load: (
-        Annotated[Quantity, Meta(description="what the display counts with", examples=["50 ohm"])]
+        Annotated[
+            Quantity, Meta(description="what the display counts with", examples=["high impedance"])
+        ]
         | None
     ) = None
     attenuator: (

@@ -7,7 +7,7 @@ stream socket does: what was not read in time is still there for the next reader
 from collections import deque
 from collections.abc import Iterable, Mapping
 
-from benchlog.errors import IdentityError, LinkLost, LinkRefused, LinkTimeout, Misuse
+from benchlog.errors import IdentityError, LinkLost, LinkRefused, LinkTimeout, Misuse, ReplyError
 from benchlog.practice.bench import ROLES, Addresses, Role, make_instruments
 from benchlog.practice.faults import Fault, Unkindness
 from benchlog.practice.scpi import Instrument, Response
@@ -119,6 +119,15 @@ class PracticeWire:
             raise Misuse(f"the wire to {self.address} is closed")
         if self.dirty:
             raise Misuse(f"the wire to {self.address} is dirty; recover it first")
+        arrived = [data for due_s, data in self._arriving if due_s <= self._clock.now_s()]
+        unasked = b"".join(data for data in arrived if data is not None)
+        if unasked.strip():
+            self.dirty = True
+            raise ReplyError(
+                "an answer came that nobody asked for: the instrument is out of step",
+                where=self.address,
+                raw=unasked.decode("latin-1"),
+            )
 
     def _transmit(self, message: str) -> None:
         """Let the instrument execute each line as soon as it is done with the one before."""

@@ -1,0 +1,241 @@
+"""``benchlog import``: captures become sweeps of the logbook."""
+
+import json
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from benchlog.cli.params import (
+    SERIAL,
+    design_option,
+    json_option,
+    logbook_option,
+    people_options,
+)
+from benchlog.cli.place import DESIGN, logbook_path, read_folder_design
+from benchlog.cli.show import outcome_json, print_json, print_outcome
+from benchlog.cli.street import (
+    Outcome,
+    People,
+    begin,
+    exit_code,
+    figures_of,
+    new_uuid,
+    now,
+    open_logbook,
+    settle,
+)
+from benchlog.errors import CaptureError
+from benchlog.records import Point, PointFlag, SweepStart
+
+if TYPE_CHECKING:
+    from benchlog.capture.read import Capture
+    from benchlog.design.model import Design
+    from benchlog.logbook.store import Logbook
+
+
+@click.command(name="import", short_help="Bring CSV captures into the logbook and judge them.")
+@click.argument(
+    "files", metavar="FILE...", nargs=-1, required=True, type=click.Path(path_type=Path)
+)
+@design_option
+@click.option("--serial", type=SERIAL, help="The board's serial; asked for on a terminal.")
+@logbook_option
+@people_options
+@click.option(
+    "--unit",
+    "units",
+    multiple=True,
+    metavar="COLUMN=UNIT",
+    help="Unit that the file does not give: gain=dB, frequency=kHz, input=Vpp ...",
+)
+@click.option("--preview", is_flag=True, help="Show what was understood; keep nothing.")
+@click.option("--again", is_flag=True, help="Import a file that is in the logbook already.")
+@json_option
+@click.pass_context
+def command(  # noqa: PLR0913 - one parameter for each option
+    context: click.Context,
+    /,
+    files: tuple[Path, ...],
+    *,
+    design_path: str | None,
+    serial: str | None,
+    logbook_path: str | None,
+    units: tuple[str, ...],
+    preview: bool,
+    again: bool,
+    as_json: bool,
+    **people: str,
+) -> None:
+    """Read CSV captures of one board, draw figures, judge them, and keep it all.
+
+    A capture has a frequency column and gain, gain in dB, or input and output amplitude. Without
+    --design and without a design.toml in the bench folder there are figures but no verdict.
+    """
+    from benchlog.capture.read import inspect_capture
+
+    design = _design(context, design_path)
+    named = dict(_unit(text) for text in units)
+    captures = [inspect_capture(path, design=design, units=named) for path in files]
+    if preview:
+        _preview(files, captures, design, as_json=as_json)
+        return
+    if serial is None:
+        serial = click.prompt("serial", type=SERIAL, err=True) if _asks(as_json=as_json) else ""
+    if not serial:
+        raise click.UsageError("name the board with --serial: a file name is no serial")
+    outcomes = []
+    with open_logbook(_logbook(context, logbook_path)) as logbook:
+        for path, capture in zip(files, captures, strict=True):
+            if not again:
+                _refuse_known(logbook, path, capture)
+            outcomes.append(
+                _kept(
+                    logbook,
+                    capture,
+                    start=_start(path, capture, design, serial=serial, people=People(**people)),
+                    design=design,
+                )
+            )
+    if as_json:
+        print_json([outcome_json(outcome) for outcome in outcomes])
+    else:
+        for path, capture, outcome in zip(files, captures, outcomes, strict=True):
+            _print_notes(path, capture)
+            print_outcome(outcome)
+    context.exit(exit_code(outcomes))
+
+
+def _kept(
+    logbook: "Logbook", capture: "Capture", *, start: SweepStart, design: "Design | None"
+) -> Outcome:
+    """Keep a capture whole or not at all, then draw figures and judge."""
+    points = _points(capture)
+    with logbook.together():
+        begin(logbook, start, design)
+        logbook.add_points(start.uuid, points)
+        logbook.end_sweep(start.uuid, "complete", "Imported.")
+    outcome = Outcome(start=start, design=design, state="complete", why="Imported.", points=points)
+    return settle(logbook, outcome)
+
+
+def _points(capture: "Capture") -> tuple[Point, ...]:
+    curve = capture.curve
+    return tuple(
+        Point(
+            position=place,
+            frequency_hz=float(curve.frequency_hz[place]),
+            level_vrms=0.0,
+            input_vrms=None,
+            output_vrms=None,
+            gain=float(curve.gain[place]),
+            u_gain_rel=None if curve.u_gain_rel is None else float(curve.u_gain_rel[place]),
+            phase_deg=None if curve.phase_deg is None else float(curve.phase_deg[place]),
+            flags=PointFlag.NONE if curve.flags is None else PointFlag(int(curve.flags[place])),
+        )
+        for place in range(len(curve))
+    )
+
+
+def _start(
+    path: Path, capture: "Capture", design: "Design | None", *, serial: str, people: People
+) -> SweepStart:
+    return SweepStart(
+        uuid=new_uuid(),
+        serial=serial,
+        kind="capture",
+        started_at=now(),
+        design_sha256=None if design is None else design.sha256,
+        reference=capture.curve.reference,
+        operator=people.operator,
+        lot=people.lot,
+        reason=people.reason,
+        note=people.note,
+        settings=json.dumps({"file": path.name, "notes": list(capture.notes)}),
+        capture_sha256=capture.sha256,
+        terms=capture.curve.terms,
+    )
+
+
+def _design(context: click.Context, path: str | None) -> "Design | None":
+    from benchlog.cli.params import folder_of
+
+    if path is None and not (folder_of(context) / DESIGN).exists():
+        return None
+    return read_folder_design(context, path)
+
+
+def _logbook(context: click.Context, named: str | None) -> Path:
+    return logbook_path(context, named)
+
+
+def _asks(*, as_json: bool) -> bool:
+    """Tell whether a person can be asked."""
+    import sys
+
+    return not as_json and sys.stdin is not None and sys.stdin.isatty()
+
+
+def _unit(text: str) -> tuple[str, str]:
+    column, equals, unit = text.partition("=")
+    if not equals or not column.strip() or not unit.strip():
+        raise click.BadParameter(f"{text!r} is not COLUMN=UNIT, like gain=dB", param_hint="--unit")
+    return column.strip(), unit.strip()
+
+
+def _refuse_known(logbook: "Logbook", path: Path, capture: "Capture") -> None:
+    known = logbook.captures(capture.sha256)
+    if known:
+        raise CaptureError(
+            f"this file is in the logbook already, as serial {known[-1].start.serial}",
+            where=str(path),
+            expected="a file that was not imported before",
+            hint="--again imports it once more",
+        )
+
+
+def _print_notes(path: Path, capture: "Capture") -> None:
+    for note in capture.notes:
+        click.echo(f"{path.name}: {note}")
+
+
+def _preview(
+    files: tuple[Path, ...],
+    captures: "list[Capture]",
+    design: "Design | None",
+    *,
+    as_json: bool,
+) -> None:
+    """Show what was understood of each file, and what it would come to."""
+    from benchlog.judge.verdict import judge
+
+    outcomes = []
+    for path, capture in zip(files, captures, strict=True):
+        figures = figures_of(capture.curve, design)
+        outcomes.append(
+            Outcome(
+                start=_start(path, capture, design, serial="preview", people=People()),
+                design=design,
+                state="complete",
+                why="Preview: nothing was kept.",
+                points=_points(capture),
+                figures=figures,
+                verdict=None if design is None else judge(figures, design.budget),
+            )
+        )
+    if as_json:
+        print_json(
+            [
+                outcome_json(outcome) | {"file": str(path), "understood": capture.understood()}
+                for path, capture, outcome in zip(files, captures, outcomes, strict=True)
+            ]
+        )
+        return
+    for path, capture, outcome in zip(files, captures, outcomes, strict=True):
+        click.echo(str(path))
+        for name, value in capture.understood().items():
+            click.echo(f"  {name:<12} {value}")
+        _print_notes(path, capture)
+        print_outcome(outcome)
+    click.echo("preview: nothing was kept")
