@@ -24,11 +24,12 @@ class StopFlag:
     return.
     """
 
-    __slots__ = ("exit_code", "why")
+    __slots__ = ("_asking", "exit_code", "why")
 
     def __init__(self) -> None:
         self.why: str | None = None
         self.exit_code = ExitCode.STOPPED
+        self._asking = False
 
     def set(self, why: str, *, exit_code: int = ExitCode.STOPPED) -> None:
         """Ask for the end; the first reason stays."""
@@ -39,6 +40,28 @@ class StopFlag:
     def is_set(self) -> bool:
         """Tell whether the end was asked for."""
         return self.why is not None
+
+    @contextmanager
+    def asking(self) -> Iterator[None]:
+        """Let the first signal interrupt already, while nothing runs and a person is asked."""
+        self._asking = True
+        try:
+            yield
+        finally:
+            self._asking = False
+
+    def on_signal(self, number: int, _frame: FrameType | None) -> None:
+        """Note a signal; interrupt where it is not the first, or where nothing runs."""
+        at_once = self.is_set() or self._asking
+        name = signal.Signals(number).name
+        self.set(
+            "The sweep was stopped by Ctrl-C."
+            if name == "SIGINT"
+            else f"The sweep was stopped by the system ({name}).",
+            exit_code=ExitCode.TERMINATED if name == "SIGTERM" else ExitCode.STOPPED,
+        )
+        if at_once:
+            raise KeyboardInterrupt
 
 
 @contextmanager
@@ -53,22 +76,10 @@ def stop_on_signals(stop: StopFlag | None = None) -> Iterator[StopFlag]:
     """
     flag = StopFlag() if stop is None else stop
 
-    def on_signal(number: int, _frame: FrameType | None) -> None:
-        if flag.is_set():
-            raise KeyboardInterrupt
-        name = signal.Signals(number).name
-        terminated = name == "SIGTERM"
-        flag.set(
-            "The sweep was stopped by Ctrl-C."
-            if name == "SIGINT"
-            else f"The sweep was stopped by the system ({name}).",
-            exit_code=ExitCode.TERMINATED if terminated else ExitCode.STOPPED,
-        )
-
     if threading.current_thread() is not threading.main_thread():
         yield flag
         return
-    before = {number: signal.signal(number, on_signal) for number in _SIGNALS}
+    before = {number: signal.signal(number, flag.on_signal) for number in _SIGNALS}
     try:
         yield flag
     finally:

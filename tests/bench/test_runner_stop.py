@@ -61,6 +61,22 @@ def test_the_second_signal_interrupts(second: str) -> None:
     assert flag.why == "The sweep was stopped by Ctrl-C."
 
 
+@posix
+@pytest.mark.parametrize(("name", "exit_code"), [("SIGINT", 130), ("SIGTERM", 143)])
+def test_a_signal_interrupts_a_question(name: str, exit_code: int) -> None:
+    """Where a person is asked and nothing runs, one press is enough; afterwards not."""
+    with stop_on_signals() as flag:
+        with pytest.raises(KeyboardInterrupt), flag.asking():
+            os.kill(os.getpid(), signal.Signals[name])
+        assert (flag.is_set(), flag.exit_code) == (True, exit_code)
+
+    with stop_on_signals() as flag:
+        with flag.asking():
+            pass
+        os.kill(os.getpid(), signal.SIGINT)
+        assert flag.is_set()
+
+
 def test_outside_the_main_thread_the_flag_works_without_signals() -> None:
     """Handlers belong to the main thread; another one gets a plain flag."""
     before = signal.getsignal(signal.SIGINT)
