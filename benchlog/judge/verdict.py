@@ -2,6 +2,7 @@
 
 from benchlog.design.model import Budget, Line
 from benchlog.judge.rule import Limits, conformance_probability, decide
+from benchlog.notation import si
 from benchlog.records import (
     VERDICT_ORDER,
     Figure,
@@ -78,7 +79,7 @@ def _by_bound(figure: Figure, limits: Limits) -> VerdictWord:
 
 
 def _known(figure: Figure, why: str) -> str:
-    told = f"known only to be {figure.bound} {figure.value:.4g} {figure.unit}"
+    told = f"known only to be {figure.bound} {si(figure.value, figure.unit)}"
     return f"{told}: {why}" if why else told
 
 
