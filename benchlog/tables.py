@@ -7,25 +7,23 @@ import tomllib
 from collections.abc import Mapping
 from dataclasses import dataclass
 from pathlib import Path
-from typing import Any, Generic, TypeAlias, TypeVar
+from typing import Any, Generic, TypeAlias, TypeVar, get_args, get_origin
 
 import msgspec
 
 from benchlog.errors import FileFormatError
+from benchlog.quantity import shown
 from benchlog.table_types import hints, item_of, keys, leaves, metas, structs
 
 S = TypeVar("S", bound=msgspec.Struct)
 Steps: TypeAlias = tuple[str | int, ...]
 
 _LARGEST_BYTES = 1_000_000
+_NAMELESS = "a table of tables lacks a name"
 _COMPLAINT = re.compile(r"(?P<what>.*?)(?: - at `\$\.?(?P<path>.*)`)?", re.DOTALL)
 _QUOTED = re.compile(r"[`'](.*)[`']", re.DOTALL)
-_KINDS = {
-    "str": "a text",
-    "int": "a whole number",
-    "float": "a number",
-    "bool": "true or false",
-}
+_KINDS = {str: "a text", int: "a whole number", float: "a number"}
+_LONGEST_KEY = 60
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -101,9 +99,12 @@ class FileKind(Generic[S]):
 
     def _tables(self, text: str) -> dict[str, Any]:
         """Read TOML; some editors put a byte order mark in front, which TOML does not allow."""
+        text = text.removeprefix("\ufeff")
+        if not text.strip():
+            raise self.error("the file is empty", expected=f"a {self.noun} in TOML", hint=self.hint)
         try:
-            return tomllib.loads(text.removeprefix("\ufeff"))
-        except (tomllib.TOMLDecodeError, RecursionError) as error:
+            return tomllib.loads(text)
+        except (ValueError, RecursionError) as error:
             reason = str(error) if isinstance(error, ValueError) else "nested too deeply"
             raise self.error(
                 f"the file is not TOML: {reason}",
@@ -113,7 +114,9 @@ class FileKind(Generic[S]):
 
 def spoken(steps: Steps) -> str:
     """Write a key path as people count: ``stage[1].feedback``."""
-    text = "".join(f"[{step + 1}]" if isinstance(step, int) else f".{step}" for step in steps)
+    text = "".join(
+        f"[{step + 1}]" if isinstance(step, int) else f".{_legible(step)}" for step in steps
+    )
     return text.removeprefix(".")
 
 
@@ -125,7 +128,21 @@ class _Complaint(Generic[S]):
         self.data = data
 
     def about(self, complaint: str) -> FileFormatError:
-        what, steps = self._place(complaint)
+        try:
+            what, steps = self._place(complaint)
+            return self._translated(what, steps)
+        except (LookupError, TypeError, AttributeError):
+            # A key with brackets or backticks in it defeats the reading of msgspec's own message.
+            return self.kind.error(complaint, expected="keys of letters, digits, _ and -")
+
+    def _translated(self, what: str, steps: Steps) -> FileFormatError:
+        """Say in our words what msgspec says about the value at a place."""
+        if what == _NAMELESS or _is_mapping(self._hint_at(steps)):
+            return self.kind.error(
+                f"the {steps[-1]} has no name",
+                where=spoken(steps),
+                expected=f"a table for each {steps[-1]}, for example [{spoken(steps)}.main]",
+            )
         quoted = _QUOTED.search(what)
         name = quoted.group(1) if quoted else ""
         if "unknown field" in what:
@@ -154,7 +171,10 @@ class _Complaint(Generic[S]):
         # msgspec does not name the keys of a mapping: find the one that is wrong.
         steps = _steps(before)
         item = item_of(self._hint_at(steps))
-        for name, value in _value_at(steps, self.data).items():
+        tables = _value_at(steps, self.data)
+        if set(tables) & set(keys(structs(item)[0])):
+            return _NAMELESS, steps
+        for name, value in tables.items():
             try:
                 msgspec.convert(value, type=item)
             except msgspec.ValidationError as error:
@@ -174,7 +194,7 @@ class _Complaint(Generic[S]):
     def _unknown_word(self, name: str, steps: Steps) -> FileFormatError:
         words = self._words(steps)
         return self.kind.error(
-            f"{spoken(steps)}: {name!r} is not a word for it",
+            f"{spoken(steps)}: {shown(name)} is not a word for it",
             where=spoken(steps),
             expected=f"one of: {', '.join(words)}",
             hint=_nearest(name, words),
@@ -225,7 +245,7 @@ class _Complaint(Generic[S]):
 
 
 def _is_mapping(hint: object) -> bool:
-    return getattr(hint, "__origin__", None) is dict
+    return get_origin(hint) is dict or any(_is_mapping(part) for part in get_args(hint))
 
 
 def _parted(complaint: str) -> tuple[str, str]:
@@ -248,8 +268,16 @@ def _told(value: object) -> str:
         return "a list" if value else "an empty list"
     if isinstance(value, Mapping):
         return "a table"
-    shown = repr(value)
-    return f"{_KINDS.get(type(value).__name__, 'a date or a time')}: {shown[:40]}"
+    if isinstance(value, bool):
+        return str(value).lower()
+    if isinstance(value, str | int | float):
+        return f"{_KINDS[type(value)]}: {shown(value)}"
+    return f"a date or a time: {value}"
+
+
+def _legible(key: str) -> str:
+    """Return a key as it may be shown on a terminal."""
+    return key if key.isprintable() and len(key) <= _LONGEST_KEY else shown(key)
 
 
 def _value_at(steps: Steps, data: Any) -> Any:  # noqa: ANN401 - TOML data

@@ -19,9 +19,9 @@ from benchlog.circuit.topologies import (
 )
 from benchlog.design.entries import Reader, read_part
 from benchlog.design.file import StageFile
-from benchlog.design.keys import hints, metas
 from benchlog.design.model import PlacedStage
 from benchlog.errors import DesignFileError
+from benchlog.table_types import hints, metas
 
 _TOPOLOGIES: Mapping[str, type[Any]] = {
     "follower": Follower,

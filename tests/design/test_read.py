@@ -69,7 +69,7 @@ def test_tables_that_are_none(text: str, where: str, what: str, expected: str) -
         (b"a = " + b"9" * 5000, None, ""),
         (b'name = "caf\xe9"', "the file is not UTF-8 text: byte 0xe9 in line 1", ": line 1"),
         (b"a = 1\n\nb = '\xff\xfe'", "the file is not UTF-8 text: byte 0xff in line 3", ": line 3"),
-        (b"#" * 1_000_001, "the file is too large for a design", ""),
+        (b"#" * 1_000_001, "the file is too large for a design file", ""),
     ],
     ids=range(11),
 )
