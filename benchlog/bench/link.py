@@ -128,16 +128,22 @@ class VisaWire:
             raise Misuse(f"the link to {self.address} is dirty: recover it first")
         # Set before anything moves: an interrupt at any moment must find it set.
         self.dirty = True
+        self._check_in_step()
+        yield
+        self._check_in_step()
+        self.dirty = False
+
+    def _check_in_step(self) -> None:
+        """Refuse to go on with more answers than questions: one of them would be the wrong one."""
         unasked = self._transport.unread()
         if unasked.strip(_PADDING):
             raise ReplyError(
                 "an answer came that nobody asked for: the instrument is out of step",
                 where=self.address,
                 raw=unasked,
-                hint="if it happens again, ask the instrument's maker; the link is cleaned now",
+                expected="one answer to each question",
+                hint="if it happens again, look for a second program on the same instrument",
             )
-        yield
-        self.dirty = False
 
 
 class _Transport:

@@ -77,7 +77,9 @@ class PracticeWire:
         """
         self._check_usable()
         self._transmit(message)
-        return self._receive(message, timeout_s)
+        answer = self._receive(message, timeout_s)
+        self._check_in_step()
+        return answer
 
     def recover(self) -> None:
         """Throw away what has arrived and identify the instrument anew; reopen if that fails.
@@ -119,6 +121,9 @@ class PracticeWire:
             raise Misuse(f"the wire to {self.address} is closed")
         if self.dirty:
             raise Misuse(f"the wire to {self.address} is dirty; recover it first")
+        self._check_in_step()
+
+    def _check_in_step(self) -> None:
         arrived = [data for due_s, data in self._arriving if due_s <= self._clock.now_s()]
         unasked = b"".join(data for data in arrived if data is not None)
         if unasked.strip():
@@ -127,6 +132,7 @@ class PracticeWire:
                 "an answer came that nobody asked for: the instrument is out of step",
                 where=self.address,
                 raw=unasked.decode("latin-1"),
+                expected="one answer to each question",
             )
 
     def _transmit(self, message: str) -> None:
