@@ -74,12 +74,13 @@ class DesignGbw:
         gain_tells = np.full(ln_gain.shape, alone)
         ln_gbw, by_corner, by_part = self._solved_with_slopes(ln_corner, parts)
         by_gain = np.einsum("sp,sp->s", by_part, to_parts)
-        left = by_part**2 @ self._u**2 - (by_part @ spread) * by_gain
+        # What the gain, itself uncertain by causes counted elsewhere, does not tell of the parts.
+        untold = by_part - by_gain[:, None] * self._gain_by_part
         return Implied(
             ln_gbw=np.where(contradicted & ~gain_tells, np.nan, ln_gbw),
             by_gain=by_gain,
             by_corner=by_corner,
-            u_parts=np.sqrt(np.maximum(left, 0.0)),
+            u_parts=np.sqrt(untold**2 @ self._u**2),
             contradicted=contradicted,
             gain_tells=gain_tells,
         )
