@@ -65,3 +65,18 @@ def test_a_meter_that_is_always_late(tmp_path: Path) -> None:
     assert result.error is not None
     assert 1 <= len(kept) < len(SCHEDULE.steps)
     assert [point.gain for point in kept] == pytest.approx(GAINS[: len(kept)], rel=1e-4)
+
+
+@pytest.mark.parametrize("role", ["source", "output meter"])
+def test_a_repeated_reply(tmp_path: Path, role: Role) -> None:
+    """A reply that comes once more before the next one is not taken for it."""
+    fault = Fault(kind="stale", nth=6)
+    kept = list[Point]()
+    with (
+        PracticeServer(perfect_world(), faults=faults_at(role, fault)) as server,
+        bench_over_tcp(tmp_path, server) as bench,
+    ):
+        result = run_sweep(bench, SCHEDULE, keep=kept.append)
+
+    assert (result.state, len(result.recoveries)) == ("complete", 1)
+    assert [point.gain for point in kept] == pytest.approx(GAINS, rel=1e-4)
