@@ -190,7 +190,8 @@ def _scanned(stop: "StopFlag") -> Iterator[str]:
     """Ask for one serial after another; an empty line or the end of input ends."""
     while not stop.is_set():
         try:
-            text = input("\nserial (Enter alone ends): ")
+            with stop.asking():
+                text = input("\nserial (Enter alone ends): ")
         except (EOFError, KeyboardInterrupt):
             return
         if not text.strip():
@@ -205,12 +206,7 @@ def _settings(schedule: "Schedule", setup: "BenchSetup") -> str:
     from benchlog import __version__
 
     return json.dumps(
-        {
-            "program": __version__,
-            "bench": setup.text,
-            "attenuation": schedule.attenuation,
-            "schedule": [[step.frequency_hz, step.level_vrms] for step in schedule.steps],
-        }
+        {"program": __version__, "bench": setup.text, "schedule": schedule.settings()}
     )
 
 

@@ -67,21 +67,24 @@ def verdict_table(verdict: Verdict) -> str:
 
 def history_table(rows: Sequence[HistoryRow]) -> str:
     """Write sweeps, oldest first: figures with their expanded uncertainty, and the verdict."""
-    table = _table("when (UTC)", "serial", "design", "gain", "corner", "GBW", "verdict", "sweep")
+    table = _table(
+        "when (UTC)", "serial", "design", "gain +- U", "corner +- U", "GBW +- U", "verdict", "sweep"
+    )
     for row in rows:
         figures = row.figures
         word = row.verdict.overall.upper() if row.verdict else row.state
         table.add_row(
-            row.started_at[:19].replace("T", " "),
+            row.started_at[:16].replace("T", " "),
             row.serial,
             f"{row.design_name} {row.design_revision}" if row.design_name else "-",
             _expanded(figures.gain_db if figures else None),
             _expanded(figures.corner_hz if figures else None),
             _expanded(figures.gbw_hz if figures else None),
             word,
-            row.sweep[:8] + (" SIMULATED" if row.simulated else ""),
+            row.sweep[:8] + (" SIM" if row.simulated else ""),
         )
-    return _rendered(table)
+    note = "\nSIM: simulated on a practice bench" if any(row.simulated for row in rows) else ""
+    return _rendered(table) + note
 
 
 def plain_table(columns: Sequence[str], rows: Sequence[Sequence[str]]) -> str:
@@ -93,12 +96,14 @@ def plain_table(columns: Sequence[str], rows: Sequence[Sequence[str]]) -> str:
 
 
 def _expanded(figure: Figure | None) -> str:
-    if figure is None or figure.U is None:
+    """Write a figure with its expanded uncertainty: ``"32.074 +- 0.009 dB"``."""
+    if figure is None or not figure.U:
         return figure_text(figure)
-    rounded = with_uncertainty(figure.value, figure.u, figure.unit).split("(")[0]
-    whole = with_uncertainty(figure.value, figure.u, figure.unit)
-    unit = whole.rpartition(" ")[2]
-    return f"{rounded} {unit} +- {si(figure.U, figure.unit, 2)}"
+    number, _, rest = with_uncertainty(figure.value, figure.U, figure.unit).partition("(")
+    digits, _, unit = rest.partition(")")
+    decimals = len(number.partition(".")[2])
+    spread = digits if "." in digits else f"{int(digits) / 10**decimals:.{decimals}f}"
+    return f"{number} +- {spread}{unit}"
 
 
 def _value(line: LineVerdict) -> str:
