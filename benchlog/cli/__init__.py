@@ -66,7 +66,7 @@ def main() -> NoReturn:
         if isinstance(stream, io.TextIOWrapper):
             stream.reconfigure(errors="replace")
     try:
-        code = program.main(standalone_mode=False)
+        code = program.main(prog_name="benchlog", standalone_mode=False)
         sys.stdout.flush()
     except click.exceptions.Exit as ended:
         code = ended.exit_code

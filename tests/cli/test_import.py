@@ -1,0 +1,79 @@
+"""``benchlog import``: from a CSV file to a verdict with one command."""
+
+from pathlib import Path
+
+import pytest
+
+from benchlog.capture.example import example_capture
+from benchlog.cli.new import bench_text, make_folder
+from benchlog.logbook.store import Logbook
+from tests.cli.conftest import Run
+
+
+@pytest.fixture
+def home(tmp_path: Path) -> Path:
+    """Return a bench folder with a capture in it."""
+    folder = tmp_path / "bench"
+    make_folder(folder, bench_text())
+    (folder / "capture.csv").write_text(example_capture(), encoding="utf-8")
+    return folder
+
+
+def test_capture_becomes_a_judged_sweep(run: Run, home: Path) -> None:
+    """The example was made with a gain of 47.8 and a corner of 60.1 kHz."""
+    ran = run("-C", home, "import", home / "capture.csv", "--serial", "0006", "--json")
+
+    board = ran.data[0]
+    assert ran.code == 0
+    assert board["figures"]["gain"]["value"] == pytest.approx(47.8, rel=5e-4)
+    assert board["figures"]["corner_hz"]["value"] == pytest.approx(60.1e3, rel=1e-3)
+    assert board["verdict"]["overall"] == "pass"
+    assert board["simulated"] is False
+    with Logbook(home / "logbook.db", read_only=True) as logbook:
+        assert logbook.history("0006")[0].kind == "capture"
+
+
+def test_same_file_twice_is_refused_unless_asked(run: Run, home: Path) -> None:
+    """By the hash of its bytes."""
+    file = home / "capture.csv"
+    assert run("-C", home, "import", file, "--serial", "0006").code == 0
+
+    again = run("-C", home, "import", file, "--serial", "0007")
+    assert again.code == 1
+    assert "is in the logbook already, as serial 0006" in again.err
+    assert run("-C", home, "import", file, "--serial", "0006", "--again").code == 0
+
+
+def test_preview_keeps_nothing(run: Run, home: Path) -> None:
+    """It shows what was understood and what it would come to."""
+    ran = run("-C", home, "import", home / "capture.csv", "--preview")
+
+    assert ran.code == 0
+    for words in ("semicolon", "Frequency (Hz)", "verdict: PASS", "preview: nothing was kept"):
+        assert words in ran.out
+    with Logbook(home / "logbook.db", read_only=True) as logbook:
+        assert logbook.info().sweeps == 0
+
+
+def test_unit_is_asked_for_and_taken(run: Run, home: Path) -> None:
+    """Never guessed."""
+    rows = "\n".join(f"{10 ** (2 + i / 10):.6g};{40 - i / 10:.3f}" for i in range(30))
+    (home / "plain.csv").write_text(f"Frequency (Hz);Gain\n{rows}\n")
+
+    refused = run("-C", home, "import", home / "plain.csv", "--serial", "1")
+    assert refused.code == 1
+    assert "--unit gain=V/V" in refused.err
+    taken = run("-C", home, "import", home / "plain.csv", "--serial", "1", "--unit", "gain=dB")
+    assert taken.code in {3, 4}
+
+
+def test_without_a_design_there_are_figures_but_no_verdict(run: Run, tmp_path: Path) -> None:
+    """GBW is then gain times corner, and the record says so."""
+    (tmp_path / "capture.csv").write_text(example_capture(), encoding="utf-8")
+    ran = run("-C", tmp_path, "import", tmp_path / "capture.csv", "--serial", "6", "--json")
+
+    board = ran.data[0]
+    assert ran.code == 0
+    assert board["verdict"] is None
+    assert board["design"] is None
+    assert board["figures"]["gbw_hz"]["basis"] == "signal gain"
