@@ -1,40 +1,36 @@
 """From one curve to its figures."""
 
 import math
+from dataclasses import replace
 from typing import Literal
 
 import numpy as np
 
-from benchlog.curve import FloatArray, GainCurve
+from benchlog.curve import GainCurve
 from benchlog.design.model import Design
-from benchlog.errors import Misuse
 from benchlog.extract.bound import lowest_corner_hz
+from benchlog.extract.choose import Choice, choose, shape_named
+from benchlog.extract.draw import drawn
 from benchlog.extract.implied import Implied
+from benchlog.extract.landmarks import Landmark
 from benchlog.extract.reduce import (
-    SHAPE,
     Reduced,
     gbw_faults,
     implied_gbw,
-    reduce_sweeps,
+    prepare,
     too_few,
 )
-from benchlog.extract.uncertainty import (
-    Cause,
-    figure,
-    scatter_cause,
-    shares_of,
-    term_causes,
-)
-from benchlog.extract.validity import Fault, Seen, reasons_of
+from benchlog.extract.sentences import reasons_of
+from benchlog.extract.told import seen_of, tried, why
+from benchlog.extract.uncertainty import Cause, figure, scatter_cause, shares_of, term_causes
+from benchlog.extract.validity import FIGURES_TAKEN, Fault
 from benchlog.notation import decibels
 from benchlog.records import Figure, Figures, TermShare
 
-METHOD = "1"
+METHOD = "2"
 _DB_PER_NEPER = 20.0 / math.log(10.0)
-_GAIN: FloatArray = np.array([1.0, 0.0])
-_CORNER: FloatArray = np.array([0.0, 1.0])
-
-ShapeName = Literal["auto", "one-pole"]
+_UNITS = {"gain": "V/V", "gain_db": "dB", "peaking_db": "dB"}
+CHOICE = "choice of shape"
 
 
 def extract(curve: GainCurve, design: Design | None = None, *, shape: str = "auto") -> Figures:
@@ -43,7 +39,7 @@ def extract(curve: GainCurve, design: Design | None = None, *, shape: str = "aut
     Args:
         curve: What was measured; flagged points are left out of the fit.
         design: What the board is built to: gives GBW its noise gain.
-        shape: ``"auto"`` or ``"one-pole"``.
+        shape: ``"auto"``, or a name that ``choose.shape_named`` knows: ``"two-pole"``.
 
     Returns:
         Figures with their uncertainties and term tables.  What the curve cannot carry is None,
@@ -52,23 +48,26 @@ def extract(curve: GainCurve, design: Design | None = None, *, shape: str = "aut
     Raises:
         Misuse: There is no such shape.
     """
-    if shape not in {"auto", SHAPE.name}:
-        raise Misuse(f"there is no shape {shape!r}")
-    reduced = reduce_sweeps(
+    data = prepare(
         curve.frequency_hz[None, :],
         curve.gain[None, :],
         u_gain_rel=None if curve.u_gain_rel is None else curve.u_gain_rel[None, :],
         usable=curve.usable[None, :],
     )
-    left_out = tuple(int(place) for place in np.flatnonzero(~curve.usable))
+    choice = choose(data, design, shape=shape)
+    left_out = tuple(int(place) for place in np.flatnonzero(~curve.usable | choice.wild[0]))
+    reduced = choice.tried[choice.chosen[0]]
     if too_few(reduced)[0]:
         return Figures(
-            shape=SHAPE.name,
-            validity=reasons_of(int(reduced.faults[0]), _seen(curve, reduced)),
+            shape=reduced.shape.name,
+            validity=reasons_of(int(reduced.faults[0]), seen_of(curve, choice, reduced)),
             method=METHOD,
             left_out=left_out,
         )
-    return _Drawing(curve, design, reduced).figures(left_out)
+    runner_up = None
+    if choice.runner_up[0] >= 0:
+        runner_up = _Drawing(curve, design, choice.tried[choice.runner_up[0]])
+    return _Drawing(curve, design, reduced).figures(choice, runner_up, left_out=left_out)
 
 
 class _Drawing:
@@ -76,106 +75,118 @@ class _Drawing:
 
     def __init__(self, curve: GainCurve, design: Design | None, reduced: Reduced) -> None:
         self.curve, self.reduced = curve, reduced
-        self.stated = curve.u_gain_rel is not None
         self.causes: list[Cause] = [
-            scatter_cause(reduced.fit, stated=self.stated),
+            scatter_cause(reduced.fit, stated=reduced.data.stated),
             *term_causes(
                 curve.terms,
                 reduced.fit,
                 frequency_hz=curve.frequency_hz,
-                weight=reduced.weight[0],
+                weight=reduced.data.weight[0],
             ),
         ]
-        u_ln_gain = math.sqrt(sum(cause.share(_GAIN) ** 2 for cause in self.causes))
-        source_ohm = 0.0 if curve.reference == "input" else (curve.source_ohm or 0.0)
-        self.implied = implied_gbw(
-            reduced, design, u_ln_gain=np.array([u_ln_gain]), source_ohm=source_ohm
-        )
-        self.basis: Literal["design", "signal gain"] = (
-            "design" if design is not None and design.chain().figure_stages else "signal gain"
-        )
         self.faults = int(reduced.faults[0])
-        if not self.faults:
+        self.implied = self._implied(design)
+        self.basis: Literal["design", "signal gain"] = (
+            "signal gain" if self.implied is None else "design"
+        )
+        self.landmarks = drawn(reduced, self.implied)
+        if not self.faults and self.implied is not None:
             self.faults |= int(gbw_faults(self.implied)[0])
+        if self.implied is None and not np.isfinite(self.landmarks["gbw_hz"].ln_value[0]):
+            self.faults |= int(Fault.GBW_NEEDS_DESIGN)
 
-    def figures(self, left_out: tuple[int, ...]) -> Figures:
-        ln_gain, ln_corner = (float(value) for value in self.reduced.fit.parameters[0])
-        seen = _seen(self.curve, self.reduced)
-        reasons = reasons_of(self.faults, seen)
-        taken = {name for reason in reasons for name in reason.figures}
-        gain, corner_hz = math.exp(ln_gain), math.exp(min(ln_corner, 700.0))
-        corner = self._figure(corner_hz, "Hz", _CORNER)
-        drawn: dict[str, Figure | None] = {
-            "gain": self._figure(gain, "V/V", _GAIN),
-            "gain_db": self._figure(decibels(gain), "dB", _GAIN, scale=_DB_PER_NEPER),
-            "corner_hz": corner,
-            "bandwidth_hz": corner,
-            "gbw_hz": self._gbw(self.implied),
-            "peaking_db": figure(0.0, "dB", ()),
-        }
-        drawn = {name: None if name in taken else value for name, value in drawn.items()}
-        if self.faults & (Fault.CORNER_ABOVE_SWEEP | Fault.FEW_PAST_CORNER) and drawn["gain"]:
-            drawn["corner_hz"] = drawn["bandwidth_hz"] = self._at_least()
-        return Figures(
-            gain=drawn["gain"],
-            gain_db=drawn["gain_db"],
-            corner_hz=drawn["corner_hz"],
-            bandwidth_hz=drawn["bandwidth_hz"],
-            gbw_hz=drawn["gbw_hz"],
-            peaking_db=drawn["peaking_db"],
-            shape=SHAPE.name,
-            validity=reasons,
-            gbw_basis=self.basis if drawn["gbw_hz"] else None,
-            chosen_because="It is the only shape that was asked for.",
-            method=METHOD,
-            left_out=left_out,
-        )
-
-    def _figure(
-        self, value: float, unit: str, sensitivity: FloatArray, *, scale: float | None = None
-    ) -> Figure:
-        return figure(
-            value,
-            unit,
-            shares_of(self.causes, sensitivity, scale=value if scale is None else scale),
-        )
-
-    def _gbw(self, implied: Implied) -> Figure | None:
-        if not np.isfinite(implied.ln_gbw[0]):
+    def _implied(self, design: Design | None) -> Implied | None:
+        if design is None or not design.chain().figure_stages:
             return None
-        value = math.exp(min(float(implied.ln_gbw[0]), 700.0))
-        sensitivity = np.array([implied.by_gain[0], implied.by_corner[0]])
-        shares = shares_of(self.causes, sensitivity, scale=value)
-        parts = TermShare(
-            name="tolerance of the parts",
-            u=value * float(implied.u_parts[0]),
-            dof=math.inf,
-            kind="B",
+        by_gain = np.zeros(len(self.reduced.shape.parameters))
+        by_gain[0] = 1.0
+        u_ln_gain = math.sqrt(sum(cause.share(by_gain) ** 2 for cause in self.causes))
+        source_ohm = 0.0 if self.curve.reference == "input" else (self.curve.source_ohm or 0.0)
+        return implied_gbw(
+            self.reduced, design, u_ln_gain=np.array([u_ln_gain]), source_ohm=source_ohm
         )
-        return figure(value, "Hz", (*shares, parts))
+
+    def figures(
+        self, choice: Choice, runner_up: "_Drawing | None", *, left_out: tuple[int, ...]
+    ) -> Figures:
+        """Make the record.
+
+        Args:
+            choice: What was tried.
+            runner_up: The same for the next best shape, where that one is still likely.
+            left_out: Places of the points that were not fitted.
+        """
+        faults = self.faults | (int(Fault.WILD_POINT) if choice.wild.any() else 0)
+        reasons = reasons_of(faults, seen_of(self.curve, choice, self.reduced))
+        taken = {name for reason in reasons for name in reason.figures}
+        named = self._named()
+        others = {} if runner_up is None else runner_up.ln_values()
+        made: dict[str, Figure | None] = {
+            name: None if name in taken else self._figure(name, one, others.get(name))
+            for name, one in named.items()
+        }
+        if "peaking_db" not in taken and made["peaking_db"] is None:
+            made["peaking_db"] = figure(0.0, "dB", ())
+        if faults & (Fault.CORNER_ABOVE_SWEEP | Fault.FEW_PAST_CORNER) and made["gain"]:
+            made["corner_hz"] = self._at_least()
+            made["bandwidth_hz"] = made["corner_hz"] if self.reduced.lower is None else None
+        return replace(
+            Figures(
+                shape=self.reduced.shape.name,
+                validity=reasons,
+                gbw_basis=self.basis if made["gbw_hz"] else None,
+                shapes_tried=tried(choice),
+                chosen_because=why(choice),
+                method=METHOD,
+                left_out=left_out,
+            ),
+            **made,  # type: ignore[arg-type]
+        )
+
+    def _named(self) -> dict[str, Landmark]:
+        return {**self.landmarks, "gain_db": self.landmarks["gain"]}
+
+    def ln_values(self) -> dict[str, float]:
+        """Return the logarithm of each figure that this fit carries."""
+        taken = {one for reason in self._reasons() for one in reason}
+        return {
+            name: float(one.ln_value[0])
+            for name, one in self._named().items()
+            if name not in taken and np.isfinite(one.ln_value[0])
+        }
+
+    def _reasons(self) -> list[tuple[str, ...]]:
+        return [names for fault, names in FIGURES_TAKEN.items() if self.faults & fault]
+
+    def _figure(self, name: str, one: Landmark, other_ln: float | None) -> Figure | None:
+        """Make one figure; the distance to the next likely shape's value is one of its terms."""
+        ln_value = float(one.ln_value[0])
+        if not math.isfinite(ln_value):
+            return None
+        value, scale = math.exp(min(ln_value, 700.0)), _DB_PER_NEPER
+        if name in {"gain_db", "peaking_db"}:
+            value = decibels(value)
+        else:
+            scale = value
+        shares = shares_of(self.causes, one.by[0], scale=scale)
+        if name == "gbw_hz" and self.implied is not None:
+            u_parts = scale * float(self.implied.u_parts[0])
+            shares.append(
+                TermShare(name="tolerance of the parts", u=u_parts, dof=math.inf, kind="B")
+            )
+        if other_ln is not None:
+            apart = scale * abs(other_ln - ln_value)
+            shares.append(TermShare(name=CHOICE, u=apart, dof=math.inf, kind="B"))
+        return figure(value, _UNITS.get(name, "Hz"), shares)
 
     def _at_least(self) -> Figure:
-        usable = self.curve.usable
+        counts = self.reduced.data.weight[0] > 0
         bound_hz = lowest_corner_hz(
-            SHAPE,
-            self.curve.frequency_hz[usable],
-            np.log(self.curve.gain[usable]),
-            weight=self.reduced.weight[0][usable],
-            stated=self.stated,
-            ln_corner=float(self.reduced.fit.parameters[0, 1]),
+            shape_named("one-pole"),
+            self.curve.frequency_hz[counts],
+            np.log(self.curve.gain[counts]),
+            weight=self.reduced.data.weight[0][counts],
+            stated=self.reduced.data.stated,
+            ln_corner=float(self.reduced.upper.ln_value[0]),
         )
         return Figure(value=bound_hz, unit="Hz", bound="at least")
-
-
-def _seen(curve: GainCurve, reduced: Reduced) -> Seen:
-    usable_hz = curve.frequency_hz[curve.usable]
-    if usable_hz.size == 0:
-        usable_hz = curve.frequency_hz
-    corner_hz = math.exp(min(float(reduced.fit.parameters[0, 1]), 700.0))
-    return Seen(
-        count=int(reduced.fit.count[0]),
-        lowest_hz=float(usable_hz.min()),
-        highest_hz=float(usable_hz.max()),
-        corner_hz=corner_hz,
-        past_corner=int((usable_hz >= corner_hz).sum()),
-    )

@@ -7,13 +7,25 @@ import numpy.typing as npt
 
 from benchlog.curve import FloatArray, FloatsLike
 from benchlog.design.model import Design
-from benchlog.errors import CurveError, Misuse
-from benchlog.extract.reduce import SHAPE, gbw_faults, implied_gbw, reduce_sweeps
-from benchlog.extract.validity import FIGURES_TAKEN
+from benchlog.errors import CurveError
+from benchlog.extract.choose import choose, shape_named
+from benchlog.extract.draw import drawn
+from benchlog.extract.reduce import Data, Reduced, gbw_faults, implied_gbw, prepare, too_few
+from benchlog.extract.validity import FIGURES_TAKEN, Fault
 
 _DB_PER_NEPER = 20.0 / np.log(10.0)
 # So many sweeps at a time keep the working arrays in the processor's cache.
-_CHUNK = 2048
+_CHUNK = 512
+FIGURES = (
+    "gain",
+    "gain_db",
+    "corner_hz",
+    "lower_corner_hz",
+    "bandwidth_hz",
+    "gbw_hz",
+    "peaking_db",
+    "peaking_hz",
+)
 
 
 def extract_many(
@@ -33,20 +45,20 @@ def extract_many(
         design: What the boards are built to.
         phase_deg: Not used by the shapes there are.
         u_gain_rel: Relative standard uncertainty of each gain, shape that broadcasts to gain's.
-        shape: ``"auto"`` or ``"one-pole"``.
+        shape: ``"auto"``, or a name that ``choose.shape_named`` knows.
 
     Returns:
-        Arrays of shape (sweeps,): ``gain, u_gain, gain_db, u_gain_db, corner_hz, u_corner_hz,
-        gbw_hz, u_gbw_hz``, NaN where a sweep cannot carry the figure, and ``validity``, bits of
-        ``benchlog.extract.validity.Fault``.
+        Arrays of shape (sweeps,): each name of ``FIGURES`` and the same with ``u_`` before it, NaN
+        where a sweep cannot carry the figure; ``shape``, the name of the fitted shape; and
+        ``validity``, bits of ``benchlog.extract.validity.Fault``.
 
     Raises:
         CurveError: Shapes do not fit together.
         Misuse: There is no such shape.
     """
     del phase_deg
-    if shape not in {"auto", SHAPE.name}:
-        raise Misuse(f"there is no shape {shape!r}")
+    if shape != "auto":
+        shape_named(shape)
     gains = np.asarray(gain, dtype=float)
     if gains.ndim != 2:
         raise CurveError(
@@ -54,54 +66,89 @@ def extract_many(
         )
     frequencies = _beside(frequency_hz, gains, "frequency_hz")
     noise = None if u_gain_rel is None else _beside(u_gain_rel, gains, "u_gain_rel")
-    chunks = [
-        _chunk(
-            frequencies[rows],
-            gains[rows],
-            design,
-            u_gain_rel=None if noise is None else noise[rows],
-        )
-        for rows in (slice(at, at + _CHUNK) for at in range(0, max(len(gains), 1), _CHUNK))
-    ]
+    chunks = []
+    for at in range(0, max(len(gains), 1), _CHUNK):
+        rows = slice(at, at + _CHUNK)
+        data = _data(frequencies[rows], gains[rows], None if noise is None else noise[rows])
+        chunks.append(_chunk(data, design, shape))
     return {name: np.concatenate([chunk[name] for chunk in chunks]) for name in chunks[0]}
 
 
-def _chunk(
-    frequency_hz: FloatArray,
-    gain: FloatArray,
-    design: Design | None,
-    *,
-    u_gain_rel: FloatArray | None,
-) -> dict[str, npt.NDArray[Any]]:
+def _data(frequency_hz: FloatArray, gain: FloatArray, u_gain_rel: FloatArray | None) -> Data:
     with np.errstate(invalid="ignore"):
         usable = np.isfinite(gain) & (gain > 0) & (frequency_hz > 0)
         if u_gain_rel is not None:
             usable &= np.isfinite(u_gain_rel) & (u_gain_rel > 0)
-    reduced = reduce_sweeps(frequency_hz, gain, u_gain_rel=u_gain_rel, usable=usable)
-    with np.errstate(invalid="ignore", over="ignore"):
-        covariance = reduced.covariance
-        u_ln_gain, u_ln_corner = np.sqrt(np.einsum("spp->ps", covariance))
-        implied = implied_gbw(reduced, design, u_ln_gain=u_ln_gain)
-        by = np.stack([implied.by_gain, implied.by_corner], axis=1)
-        u_ln_gbw = np.sqrt(np.einsum("sp,spq,sq->s", by, covariance, by) + implied.u_parts**2)
-        gains, corners = np.exp(reduced.fit.parameters.T)
-        gbws = np.exp(implied.ln_gbw)
-    faults = np.where(reduced.faults == 0, gbw_faults(implied), reduced.faults)
-    figures = {
-        "gain": (gains, gains * u_ln_gain),
-        "gain_db": (_DB_PER_NEPER * np.log(gains), _DB_PER_NEPER * u_ln_gain),
-        "corner_hz": (corners, corners * u_ln_corner),
-        "gbw_hz": (gbws, gbws * u_ln_gbw),
+    return prepare(frequency_hz, gain, u_gain_rel=u_gain_rel, usable=usable)
+
+
+def _chunk(data: Data, design: Design | None, shape: str) -> dict[str, npt.NDArray[Any]]:
+    choice = choose(data, design, shape=shape)
+    needed = set(choice.chosen.tolist()) | set(choice.runner_up.tolist()) - {-1}
+    through = design if design is not None and design.chain().figure_stages else None
+    by_shape = {place: _of_shape(choice.tried[place], through) for place in sorted(needed)}
+    rows = len(choice.chosen)
+    answer: dict[str, npt.NDArray[Any]] = {
+        "validity": _taken(by_shape, choice.chosen, "validity").astype(np.int64),
+        "shape": np.array([one.shape.name for one in choice.tried])[choice.chosen],
     }
-    answer: dict[str, npt.NDArray[Any]] = {"validity": faults}
-    for name, (value, u) in figures.items():
-        taken = np.zeros(len(faults), np.bool_)
-        for fault, names in FIGURES_TAKEN.items():
-            if name in names:
-                taken |= (faults & int(fault)) != 0
-        answer[name] = np.where(taken, np.nan, value)
-        answer[f"u_{name}"] = np.where(taken, np.nan, u)
+    answer["validity"] |= np.where(choice.wild.any(axis=1), int(Fault.WILD_POINT), 0)
+    for name in FIGURES:
+        value = _taken(by_shape, choice.chosen, name) if rows else np.empty(0)
+        u = _taken(by_shape, choice.chosen, f"u_{name}")
+        other = _taken(by_shape, choice.runner_up, name)
+        apart = np.where(np.isfinite(other), other - value, 0.0)
+        answer[name], answer[f"u_{name}"] = value, np.hypot(u, apart)
     return answer
+
+
+def _taken(
+    by_shape: dict[int, dict[str, FloatArray]], which: npt.NDArray[np.int64], name: str
+) -> FloatArray:
+    """Return one figure of each sweep's own shape; NaN where there is none."""
+    answer = np.full(len(which), np.nan)
+    for place, figures in by_shape.items():
+        np.copyto(answer, figures[name], where=which == place)
+    return answer
+
+
+def _of_shape(reduced: Reduced, design: Design | None) -> dict[str, FloatArray]:
+    """Return figures, their uncertainties and faults for one shape on all sweeps."""
+    with np.errstate(all="ignore"):
+        covariance = reduced.covariance
+        implied = None
+        if design is not None:
+            implied = implied_gbw(reduced, design, u_ln_gain=np.sqrt(covariance[:, 0, 0]))
+        landmarks = drawn(reduced, implied)
+        faults = reduced.faults.copy()
+        if implied is None:
+            lacking = ~np.isfinite(landmarks["gbw_hz"].ln_value) & ~too_few(reduced)
+            faults |= np.where(lacking, int(Fault.GBW_NEEDS_DESIGN), 0)
+        else:
+            faults |= np.where(faults == 0, gbw_faults(implied), 0)
+        answer = {"validity": faults.astype(float)}
+        for name, one in landmarks.items():
+            u_ln = np.sqrt(np.einsum("sp,spq,sq->s", one.by, covariance, one.by))
+            if name == "gbw_hz" and implied is not None:
+                u_ln = np.hypot(u_ln, implied.u_parts)
+            answer[name], answer[f"u_{name}"] = np.exp(one.ln_value), np.exp(one.ln_value) * u_ln
+            if name in {"gain", "peaking_db"}:
+                in_db = "gain_db" if name == "gain" else name
+                answer[in_db] = _DB_PER_NEPER * one.ln_value
+                answer[f"u_{in_db}"] = _DB_PER_NEPER * u_ln
+    level = ~np.isfinite(answer["peaking_db"])
+    answer["peaking_db"] = np.where(level, 0.0, answer["peaking_db"])
+    answer["u_peaking_db"] = np.where(level, 0.0, answer["u_peaking_db"])
+    _take_away(answer, faults)
+    return answer
+
+
+def _take_away(answer: dict[str, FloatArray], faults: npt.NDArray[np.int64]) -> None:
+    for name in FIGURES:
+        bits = sum(int(fault) for fault, names in FIGURES_TAKEN.items() if name in names)
+        gone = (faults & bits) != 0
+        answer[name] = np.where(gone, np.nan, answer[name])
+        answer[f"u_{name}"] = np.where(gone, np.nan, answer[f"u_{name}"])
 
 
 def _beside(given: npt.ArrayLike, gains: FloatArray, name: str) -> FloatArray:

@@ -7,77 +7,177 @@ import numpy.typing as npt
 
 from benchlog.curve import FloatArray
 from benchlog.design.model import Design
-from benchlog.extract.implied import DesignGbw, Implied, signal_gain_gbw
-from benchlog.extract.models.one_pole import OnePole
+from benchlog.extract.implied import DesignGbw, Implied
+from benchlog.extract.landmarks import Landmark, lower_corner, upper_corner
+from benchlog.extract.models.composed import Composed
+from benchlog.extract.robust import most_wild_points, worst_point
 from benchlog.extract.solve import Fit, solve
 from benchlog.extract.validity import FEWEST_POINTS, Fault, faults_of
 
-SHAPE = OnePole()
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Data:
+    """Sweeps as the solver takes them, arrays of shape (sweeps, points).
+
+    Attributes:
+        ln_frequency, ln_gain: Zero where a point does not count.
+        weight: Inverse variance of ln gain where ``stated``, else 1; 0 where it does not count.
+        stated: Whether the noise is stated.
+    """
+
+    ln_frequency: FloatArray
+    ln_gain: FloatArray
+    weight: FloatArray
+    stated: bool
+
+    def without(self, wild: npt.NDArray[np.bool_]) -> "Data":
+        """Return the same sweeps without some points."""
+        weight = np.where(wild, 0.0, self.weight)
+        return Data(
+            ln_frequency=self.ln_frequency,
+            ln_gain=self.ln_gain,
+            weight=weight,
+            stated=self.stated,
+        )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Reduced:
-    """Fits of many sweeps and their faults.
+    """Fits of one shape to many sweeps, and their faults.
 
     Attributes:
-        fit: Parameters ln gain and ln corner.
-        ln_frequency, weight: As fitted, shape (sweeps, points).
+        shape: What was fitted.
+        data: What it was fitted to.
+        fit: Its parameters are those of ``shape``.
         variance: Of a point with weight 1: 1 where the noise is stated, else of the residuals.
+        upper: The upper corner.
+        lower: The lower corner; None where the shape has none.
         faults: Bits of ``Fault``, shape (sweeps,).
     """
 
+    shape: Composed
+    data: Data
     fit: Fit
-    ln_frequency: FloatArray
-    weight: FloatArray
     variance: FloatArray
+    upper: Landmark
+    lower: Landmark | None
     faults: npt.NDArray[np.int64]
 
     @property
     def covariance(self) -> FloatArray:
-        """Type A covariance of ln gain and ln corner, shape (sweeps, 2, 2)."""
+        """Type A covariance of the parameters, shape (sweeps, parameters, parameters)."""
         scaled: FloatArray = self.fit.inverse_normal * self.variance[:, None, None]
         return scaled
 
+    @property
+    def dof(self) -> FloatArray:
+        """Degrees of freedom left, at least 1, shape (sweeps,)."""
+        return np.maximum(self.fit.count - len(self.shape.parameters), 1).astype(float)
 
-def reduce_sweeps(
+    @property
+    def aicc(self) -> FloatArray:
+        """Akaike's criterion, corrected for few points, shape (sweeps,); infinity without a fit.
+
+        Source:
+            Burnham and Anderson, Model Selection and Multimodel Inference, 2.4 (from memory).
+        """
+        count = self.fit.count.astype(float)
+        chi2, free = self.fit.chi2, len(self.shape.parameters)
+        if not self.data.stated:
+            chi2 = count * np.log(np.maximum(chi2 / np.maximum(count, 1.0), 1e-24))
+            free += 1
+        room = count - free - 1
+        penalty = 2.0 * free + 2.0 * free * (free + 1) / np.where(room > 0, room, np.nan)
+        known = np.isfinite(self.fit.inverse_normal).all(axis=(1, 2)) & self.fit.converged
+        return np.where(known & (room > 0), chi2 + penalty, np.inf)
+
+
+def prepare(
     frequency_hz: FloatArray,
     gain: FloatArray,
     *,
     u_gain_rel: FloatArray | None,
     usable: npt.NDArray[np.bool_],
-) -> Reduced:
-    """Fit one pole to many sweeps.
+) -> Data:
+    """Take logarithms; every argument has shape (sweeps, points), and unusable points may be NaN.
 
     Args:
-        frequency_hz: Shape (sweeps, points); anything where not usable.
-        gain: Same shape.
-        u_gain_rel: Stated noise, same shape; None takes it from the residuals.
-        usable: Which points count, same shape.
+        frequency_hz: Hertz.
+        gain: V/V.
+        u_gain_rel: Stated noise; None takes it from the residuals.
+        usable: Which points count.
     """
     with np.errstate(invalid="ignore", divide="ignore"):
-        ln_frequency = np.where(usable, np.log(frequency_hz), 0.0)
-        ln_gain = np.where(usable, np.log(gain), 0.0)
-        weight = np.where(usable, 1.0 if u_gain_rel is None else u_gain_rel**-2.0, 0.0)
-    stated = u_gain_rel is not None
-    fit = solve(SHAPE, ln_frequency, ln_gain, weight=weight)
-    dof = np.maximum(fit.count - len(SHAPE.parameters), 1)
+        return Data(
+            ln_frequency=np.where(usable, np.log(frequency_hz), 0.0),
+            ln_gain=np.where(usable, np.log(gain), 0.0),
+            weight=np.where(usable, 1.0 if u_gain_rel is None else u_gain_rel**-2.0, 0.0),
+            stated=u_gain_rel is not None,
+        )
+
+
+def reduce_sweeps(shape: Composed, data: Data) -> Reduced:
+    """Fit one shape to many sweeps."""
+    fit = solve(shape, data.ln_frequency, data.ln_gain, weight=data.weight)
+    dof = np.maximum(fit.count - len(shape.parameters), 1)
+    upper = upper_corner(shape, fit.parameters)
+    lower = lower_corner(shape, fit.parameters)
     return Reduced(
+        shape=shape,
+        data=data,
         fit=fit,
-        ln_frequency=ln_frequency,
-        weight=weight,
-        variance=np.ones_like(fit.chi2) if stated else fit.chi2 / dof,
-        faults=faults_of(fit, ln_frequency, weight, stated=stated),
+        variance=np.ones_like(fit.chi2) if data.stated else fit.chi2 / dof,
+        upper=upper,
+        lower=lower,
+        faults=faults_of(
+            fit,
+            data.ln_frequency,
+            data.weight,
+            stated=data.stated,
+            ln_upper=upper.ln_value,
+            ln_lower=None if lower is None else lower.ln_value,
+        ),
     )
 
 
+def wild_points(reduced: Reduced) -> tuple[npt.NDArray[np.bool_], FloatArray]:
+    """Tell which points this shape finds wild, one after the other.
+
+    Returns:
+        Whether a point is wild, shape (sweeps, points), and chi squared without those points,
+        shape (sweeps,).
+    """
+    weight, stated = reduced.data.weight, reduced.data.stated
+    wild = np.zeros(weight.shape, np.bool_)
+    chi2 = reduced.fit.chi2.copy()
+    most = most_wild_points(reduced.fit.count)
+    place, found = worst_point(reduced.fit, weight, stated=stated)
+    rows = np.flatnonzero(found & (reduced.fit.count >= FEWEST_POINTS))
+    while rows.size:
+        wild[rows, place[rows]] = True
+        rest = np.where(wild[rows], 0.0, weight[rows])
+        fit = solve(
+            reduced.shape,
+            reduced.data.ln_frequency[rows],
+            reduced.data.ln_gain[rows],
+            weight=rest,
+            start=reduced.fit.parameters[rows],
+        )
+        chi2[rows] = fit.chi2
+        place[rows], again = worst_point(fit, rest, stated=stated)
+        rows = rows[again & (wild[rows].sum(axis=1) <= most[rows])]
+    too_many = wild.sum(axis=1) > most
+    wild[too_many] = False
+    chi2[too_many] = reduced.fit.chi2[too_many]
+    return wild, chi2
+
+
 def implied_gbw(
-    reduced: Reduced, design: Design | None, *, u_ln_gain: FloatArray, source_ohm: float = 0.0
+    reduced: Reduced, design: Design, *, u_ln_gain: FloatArray, source_ohm: float = 0.0
 ) -> Implied:
-    """Return the GBW that gains and corners imply, with the design or without."""
-    ln_gain, ln_corner = reduced.fit.parameters[:, 0], reduced.fit.parameters[:, 1]
-    if design is None or not design.chain().figure_stages:
-        return signal_gain_gbw(ln_gain, ln_corner)
-    return DesignGbw(design.chain(), source_ohm).of(ln_gain, ln_corner, u_ln_gain)
+    """Return the GBW that gains and corners imply through the design's noise gain."""
+    ln_gain = reduced.fit.parameters[:, 0]
+    return DesignGbw(design.chain(), source_ohm).of(ln_gain, reduced.upper.ln_value, u_ln_gain)
 
 
 def gbw_faults(implied: Implied) -> npt.NDArray[np.int64]:

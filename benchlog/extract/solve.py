@@ -19,6 +19,7 @@ _FALL_TOLERANCE = 1e-14
 # A parameter moves by no more than a factor e in one step.
 _LONGEST_STEP = 1.0
 _FIRST_DAMPING = 1e-3
+_LEAST_DAMPING = 1e-12
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -95,12 +96,12 @@ class _State:
         weighted = self.derivatives[rows] * self.weight[rows, :, None]
         normal = np.swapaxes(weighted, 1, 2) @ self.derivatives[rows]
         slope = (weighted * self.residuals[rows, :, None]).sum(axis=1)
-        diagonal = np.einsum("spp->sp", normal)
-        damped = normal.copy()
-        np.einsum("spp->sp", damped)[:] += (
-            self.damping[rows, None] * diagonal + np.finfo(float).tiny ** 0.5
-        )
-        move = np.linalg.solve(damped, slope[:, :, None])[:, :, 0]
+        # Scaled to a diagonal of one, no parameter's size or lack of effect spoils the solution.
+        scale = np.sqrt(np.einsum("spp->sp", normal))
+        scale = np.where(scale > 0, scale, 1.0)
+        damped = normal / scale[:, :, None] / scale[:, None, :]
+        np.einsum("spp->sp", damped)[:] = 1.0 + self.damping[rows, None]
+        move = np.linalg.solve(damped, (slope / scale)[:, :, None])[:, :, 0] / scale
         longest = np.abs(move).max(axis=1, keepdims=True)
         move *= np.minimum(1.0, _LONGEST_STEP / np.maximum(longest, 1e-300))
         self._judge(rows, move)
@@ -118,7 +119,9 @@ class _State:
         self.derivatives[taken] = derivatives[better]
         self.chi2[taken] = chi2[better]
         self.damping[rows] = np.where(
-            better, self.damping[rows] * 0.1, np.maximum(self.damping[rows], 1e-9) * 10.0
+            better,
+            np.maximum(self.damping[rows] * 0.1, _LEAST_DAMPING),
+            np.maximum(self.damping[rows], 1e-9) * 10.0,
         )
         small = np.abs(move).max(axis=1) < _STEP_TOLERANCE
         flat = better & (before - chi2 <= _FALL_TOLERANCE * before)

@@ -53,6 +53,8 @@ def effective_dof(shares: Sequence[TermShare]) -> float:
     """Return the degrees of freedom of a sum of independent terms (Welch-Satterthwaite, G.4.1)."""
     total = sum(share.u**2 for share in shares) ** 2
     spread = sum(share.u**4 / share.dof for share in shares)
+    if len(shares) == 1:
+        return shares[0].dof
     return total / spread if spread > 0 else math.inf
 
 

@@ -1,7 +1,6 @@
 """What a curve cannot carry, each with a name for scripts and a sentence for people."""
 
 import enum
-from dataclasses import dataclass
 
 import numpy as np
 import numpy.typing as npt
@@ -9,8 +8,6 @@ from scipy.special import chdtrc
 
 from benchlog.curve import FloatArray
 from benchlog.extract.solve import Fit
-from benchlog.notation import si
-from benchlog.records import Reason
 
 # A fit needs more points than parameters, and enough left over to see its own scatter.
 FEWEST_POINTS = 5
@@ -22,8 +19,13 @@ _MEANINGLESS_REL = 3e-4
 _POOR_PROBABILITY = 1e-5
 _POOR_SIGMAS = 4.5
 
+# Corners closer together than this leave no gain within 3 dB of the asymptotic plateau, for two
+# first-order edges: (1 + sqrt 2)^2 is needed between the poles, 2.41 between the crossings.
+NO_BAND_RATIO = 2.41
+NARROW_RATIO = 30.0
+
 _OF_CORNER = ("corner_hz", "bandwidth_hz", "gbw_hz")
-_ALL = ("gain", "gain_db", "peaking_db", "peaking_hz", *_OF_CORNER)
+_ALL = ("gain", "gain_db", "peaking_db", "peaking_hz", "lower_corner_hz", *_OF_CORNER)
 
 
 class Fault(enum.IntFlag):
@@ -39,6 +41,11 @@ class Fault(enum.IntFlag):
     NOISE_GAIN_UNKNOWN = 64
     GBW_HIDDEN = 128
     NOISE_GAIN_MEASURED = 256
+    WILD_POINT = 512
+    LOWER_BELOW_SWEEP = 1024
+    NARROW_BAND = 2048
+    NO_BAND = 4096
+    GBW_NEEDS_DESIGN = 8192
 
 
 FIGURES_TAKEN: dict[Fault, tuple[str, ...]] = {
@@ -51,50 +58,68 @@ FIGURES_TAKEN: dict[Fault, tuple[str, ...]] = {
     Fault.NOISE_GAIN_UNKNOWN: ("gbw_hz",),
     Fault.GBW_HIDDEN: ("gbw_hz",),
     Fault.NOISE_GAIN_MEASURED: (),
+    Fault.WILD_POINT: (),
+    Fault.LOWER_BELOW_SWEEP: ("lower_corner_hz", "bandwidth_hz"),
+    Fault.NARROW_BAND: (),
+    Fault.NO_BAND: _ALL,
+    Fault.GBW_NEEDS_DESIGN: ("gbw_hz",),
 }
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Seen:
-    """What the sentences about one curve quote."""
-
-    count: int
-    lowest_hz: float
-    highest_hz: float
-    corner_hz: float
-    past_corner: int
-
-
 def faults_of(
-    fit: Fit, ln_frequency: FloatArray, weight: FloatArray, *, stated: bool
+    fit: Fit,
+    ln_frequency: FloatArray,
+    weight: FloatArray,
+    *,
+    stated: bool,
+    ln_upper: FloatArray,
+    ln_lower: FloatArray | None,
 ) -> npt.NDArray[np.int64]:
-    """Return the faults of many fits of a one-pole shape, shape (sweeps,).
+    """Return the faults of many fits, shape (sweeps,).
 
     Args:
-        fit: Of the sweeps; parameter 1 is the logarithm of the corner.
+        fit: Of the sweeps.
         ln_frequency: As fitted, shape (sweeps, points).
         weight: Same shape.
         stated: Whether the weights are inverse variances.
+        ln_upper: Upper corner, shape (sweeps,).
+        ln_lower: Lower corner; None for a shape that is flat down to zero frequency.
     """
     counts = weight > 0
     lowest = np.where(counts, ln_frequency, np.inf).min(axis=1, initial=np.inf)
     highest = np.where(counts, ln_frequency, -np.inf).max(axis=1, initial=-np.inf)
-    corner = fit.parameters[:, 1]
-    past = (counts & (ln_frequency >= corner[:, None])).sum(axis=1)
+    past = (counts & (ln_frequency >= ln_upper[:, None])).sum(axis=1)
     few = fit.count < FEWEST_POINTS
-    above = corner > highest
-    rows = (
+    above = ln_upper > highest
+    rows = [
         (Fault.TOO_FEW_POINTS, few),
         (Fault.NOT_CONVERGED, ~few & ~above & ~fit.converged),
         (Fault.POOR_FIT, ~few & _poor(fit, ln_frequency, weight, stated=stated)),
-        (Fault.PLATEAU_NOT_REACHED, ~few & (corner - lowest < np.log(PLATEAU_BELOW_CORNER))),
         (Fault.CORNER_ABOVE_SWEEP, ~few & above),
         (Fault.FEW_PAST_CORNER, ~few & ~above & (past < FEWEST_PAST_CORNER)),
-    )
-    faults = np.zeros(len(corner), np.int64)
+    ]
+    if ln_lower is None:
+        falling = ln_upper - lowest < np.log(PLATEAU_BELOW_CORNER)
+        rows.append((Fault.PLATEAU_NOT_REACHED, ~few & falling))
+    else:
+        rows += _of_band(few, lowest, ln_upper=ln_upper, ln_lower=ln_lower)
+    faults = np.zeros(len(ln_upper), np.int64)
     for fault, where in rows:
         faults |= np.where(where, int(fault), 0)
     return faults
+
+
+def _of_band(
+    few: npt.NDArray[np.bool_], lowest: FloatArray, *, ln_upper: FloatArray, ln_lower: FloatArray
+) -> list[tuple[Fault, npt.NDArray[np.bool_]]]:
+    """Return the faults of a response with two corners."""
+    width = ln_upper - ln_lower
+    wide_enough = width > np.log(NO_BAND_RATIO)
+    return [
+        (Fault.NO_BAND, ~few & ~wide_enough),
+        (Fault.NARROW_BAND, ~few & wide_enough & (width < np.log(NARROW_RATIO))),
+        (Fault.LOWER_BELOW_SWEEP, ~few & (ln_lower < lowest)),
+    ]
 
 
 def _poor(
@@ -119,59 +144,3 @@ def _poor(
     meaningful = np.sqrt(size / dof) > _MEANINGLESS_REL
     patterned: npt.NDArray[np.bool_] = (ratio < 2.0 - _POOR_SIGMAS * sigma) & meaningful
     return patterned
-
-
-def reasons_of(faults: int, seen: Seen) -> tuple[Reason, ...]:
-    """Return the reasons behind a set of faults, worst first."""
-    return tuple(
-        Reason(code=code, text=text, figures=FIGURES_TAKEN[fault])
-        for fault, (code, text) in _sentences(seen).items()
-        if faults & fault
-    )
-
-
-def _sentences(seen: Seen) -> dict[Fault, tuple[str, str]]:
-    highest, corner = si(seen.highest_hz, "Hz"), si(seen.corner_hz, "Hz")
-    return {
-        Fault.TOO_FEW_POINTS: (
-            "too few points",
-            f"The curve has {seen.count} usable points; a fit needs at least {FEWEST_POINTS}.",
-        ),
-        Fault.NOT_CONVERGED: (
-            "fit did not converge",
-            "The fit found no best curve; look at the points.",
-        ),
-        Fault.POOR_FIT: (
-            "poor fit",
-            "The points leave the fitted curve by more than their scatter, or in a pattern: the"
-            " board does not have this shape, or something on the bench bends the curve.",
-        ),
-        Fault.PLATEAU_NOT_REACHED: (
-            "plateau not reached",
-            f"The gain already falls at the lowest frequency, {si(seen.lowest_hz, 'Hz')}: start"
-            f" the sweep at {si(seen.corner_hz / 10.0, 'Hz')} or lower.",
-        ),
-        Fault.CORNER_ABOVE_SWEEP: (
-            "corner above the sweep",
-            f"The gain has not fallen by 3 dB at {highest}, where the sweep ends: sweep further.",
-        ),
-        Fault.FEW_PAST_CORNER: (
-            "too few points past the corner",
-            f"Only {seen.past_corner} points lie above the corner at about {corner}: sweep beyond"
-            f" {highest}.",
-        ),
-        Fault.NOISE_GAIN_UNKNOWN: (
-            "noise gain unknown",
-            "The measured gain is not what the design's parts give within their tolerances, so"
-            " the noise gain is not known: find the wrong part first.",
-        ),
-        Fault.GBW_HIDDEN: (
-            "GBW hidden",
-            "No gain-bandwidth product gives the design this corner: another element sets it.",
-        ),
-        Fault.NOISE_GAIN_MEASURED: (
-            "noise gain from the measured gain",
-            "The measured gain is not what the design's parts give within their tolerances; the"
-            " noise gain is taken from the measured gain instead.",
-        ),
-    }

@@ -10,8 +10,10 @@ from benchlog.curve import FloatArray, GainCurve
 from benchlog.design.example import EXAMPLE_DESIGN
 from benchlog.design.read import parse_design
 from benchlog.errors import CurveError, Misuse
+from benchlog.extract.choose import shape_named
 from benchlog.extract.figures import extract
 from benchlog.extract.many import extract_many
+from benchlog.extract.reduce import prepare, reduce_sweeps
 from benchlog.extract.validity import Fault
 from benchlog.records import FIGURE_NAMES, Figure, Figures, Term
 
@@ -251,20 +253,17 @@ def test_flagged_points_are_left_out() -> None:
 
 def test_chi_squared_follows_its_distribution() -> None:
     """With stated noise the weighted residuals are chi squared with n - p degrees of freedom."""
-    from benchlog.extract.reduce import reduce_sweeps
-
     rng = np.random.default_rng(9)
     rows = one_pole(SWEPT, 48.0, 62.5e3) * np.exp(1e-3 * rng.standard_normal((2000, 41)))
-    reduced = reduce_sweeps(
+    data = prepare(
         np.tile(SWEPT, (2000, 1)),
         rows,
         u_gain_rel=np.full(rows.shape, 1e-3),
         usable=np.ones(rows.shape, np.bool_),
     )
-    low = (reduced.fit.chi2 < chi2.ppf(0.05, 39)).mean()
-    high = (reduced.fit.chi2 > chi2.ppf(0.95, 39)).mean()
-    assert low == pytest.approx(0.05, abs=0.015)
-    assert high == pytest.approx(0.05, abs=0.015)
+    fit = reduce_sweeps(shape_named("one-pole"), data).fit
+    assert (fit.chi2 < chi2.ppf(0.05, 39)).mean() == pytest.approx(0.05, abs=0.015)
+    assert (fit.chi2 > chi2.ppf(0.95, 39)).mean() == pytest.approx(0.05, abs=0.015)
 
 
 def test_malformed_arguments() -> None:

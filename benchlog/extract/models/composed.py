@@ -1,0 +1,68 @@
+"""A response of a plateau, an upper edge and perhaps a lower one."""
+
+import numpy as np
+
+from benchlog.curve import FloatArray
+from benchlog.extract.models.edge import Edge
+from benchlog.extract.models.rolloff import Rolloff
+
+_LN_ROOT_TWO = 0.5 * np.log(2.0)
+
+
+class Composed:
+    """Parameters: ln gain of the plateau, those of the upper edge, the lower edge's pole.
+
+    Args:
+        rolloff: The upper edge.
+        edge: The lower edge; None for a response that is flat down to zero frequency.
+    """
+
+    def __init__(self, rolloff: Rolloff, edge: Edge | None = None) -> None:
+        self.rolloff, self.edge = rolloff, edge
+        self.name = rolloff.name if edge is None else f"{rolloff.name}+{edge.name}"
+        lower = () if edge is None else ("ln_lower",)
+        self.parameters = ("ln_gain", *rolloff.parameters, *lower)
+        self._upper = slice(1, 1 + len(rolloff.parameters))
+
+    def upper(self, parameters: FloatArray) -> FloatArray:
+        """Return the upper edge's own parameters, shape (sweeps, own parameters)."""
+        return parameters[:, self._upper]
+
+    def start(self, ln_frequency: FloatArray, ln_gain: FloatArray, used: FloatArray) -> FloatArray:
+        """Take the plateau from the lowest points, or the highest gains where it has a lower edge.
+
+        The corners are where the gain is last and first within 3 dB of it.
+        """
+        if self.edge is None:
+            order = np.argsort(np.where(used > 0, ln_frequency, np.inf), axis=1)
+        else:
+            order = np.argsort(np.where(used > 0, -ln_gain, np.inf), axis=1)
+        first = order[:, : max(2, ln_frequency.shape[1] // 5)]
+        counted = np.take_along_axis(used, first, axis=1)
+        gains = np.take_along_axis(ln_gain, first, axis=1) * counted
+        plateau = gains.sum(axis=1) / np.maximum(counted.sum(axis=1), 1.0)
+        within = (used > 0) & (ln_gain >= (plateau - _LN_ROOT_TWO)[:, None])
+        last = np.where(within, ln_frequency, -np.inf).max(axis=1)
+        upper = self.rolloff.start(np.where(np.isfinite(last), last, 0.0))
+        columns = [plateau[:, None], upper]
+        if self.edge is not None:
+            lowest = np.where(within, ln_frequency, np.inf).min(axis=1)
+            columns.append(np.where(np.isfinite(lowest), lowest, 0.0)[:, None])
+        return np.concatenate(columns, axis=1)
+
+    def evaluate(
+        self, parameters: FloatArray, ln_frequency: FloatArray
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return ln gain and its derivatives; see ``Shape``."""
+        values, by_upper = self.rolloff.evaluate(self.upper(parameters), ln_frequency)
+        ln_gain = parameters[:, :1]
+        derivatives = np.empty((*values.shape, len(self.parameters)))
+        derivatives[:, :, 0] = 1.0
+        derivatives[:, :, self._upper] = by_upper
+        values = values + ln_gain
+        if self.edge is not None:
+            lower, by_pole, by_gain = self.edge.evaluate(parameters[:, -1:], ln_gain, ln_frequency)
+            values = values + lower
+            derivatives[:, :, 0] += by_gain
+            derivatives[:, :, -1] = by_pole
+        return values, derivatives

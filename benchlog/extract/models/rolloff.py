@@ -1,0 +1,128 @@
+"""What ends a response at its upper side: one pole, two poles, n equal poles.
+
+Each gives the logarithm of its magnitude, 0 far below its corner, with derivatives by the
+logarithms of its own parameters.
+"""
+
+from typing import Protocol
+
+import numpy as np
+from scipy.special import expit
+
+from benchlog.curve import FloatArray
+
+_FARTHEST = 300.0
+_HALF = 0.5
+
+
+class Rolloff(Protocol):
+    """An upper edge; arrays of parameters have shape (sweeps, own parameters)."""
+
+    @property
+    def name(self) -> str:
+        """As the record shows it."""
+        ...
+
+    @property
+    def parameters(self) -> tuple[str, ...]:
+        """Names of the parameters."""
+        ...
+
+    def evaluate(
+        self, parameters: FloatArray, ln_frequency: FloatArray
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return ln magnitude (sweeps, points) and derivatives (sweeps, points, parameters)."""
+        ...
+
+    def start(self, ln_corner: FloatArray) -> FloatArray:
+        """Guess the parameters from a half-power corner, shape (sweeps,)."""
+        ...
+
+    def ln_corner(self, parameters: FloatArray) -> FloatArray:
+        """Return where this alone is at half power, shape (sweeps,)."""
+        ...
+
+
+class OnePole:
+    """``|H| = 1 / sqrt(1 + (f/fc)^2)``."""
+
+    name = "one-pole"
+    parameters: tuple[str, ...] = ("ln_corner",)
+
+    def evaluate(
+        self, parameters: FloatArray, ln_frequency: FloatArray
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return ln magnitude and its derivative by ln fc."""
+        twice = 2.0 * (ln_frequency - parameters[:, :1])
+        return -_HALF * np.logaddexp(0.0, twice), expit(twice)[:, :, None]
+
+    def start(self, ln_corner: FloatArray) -> FloatArray:
+        """Take the corner."""
+        return ln_corner[:, None].copy()
+
+    def ln_corner(self, parameters: FloatArray) -> FloatArray:
+        """Return the corner."""
+        return parameters[:, 0]
+
+
+class EqualPoles:
+    """n poles at one frequency: ``sqrt(2^(1/n) - 1)`` of it is left at half power.
+
+    Args:
+        count: How many.
+    """
+
+    parameters: tuple[str, ...] = ("ln_pole",)
+
+    def __init__(self, count: int) -> None:
+        self.count = count
+        self.name = f"{count}-equal-poles"
+        self._ln_shrinkage = _HALF * float(np.log(2.0 ** (1.0 / count) - 1.0))
+
+    def evaluate(
+        self, parameters: FloatArray, ln_frequency: FloatArray
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return ln magnitude and its derivative by the logarithm of the pole."""
+        twice = 2.0 * (ln_frequency - parameters[:, :1])
+        values = -_HALF * self.count * np.logaddexp(0.0, twice)
+        return values, self.count * expit(twice)[:, :, None]
+
+    def start(self, ln_corner: FloatArray) -> FloatArray:
+        """Put the poles where together they have the corner."""
+        return (ln_corner - self._ln_shrinkage)[:, None]
+
+    def ln_corner(self, parameters: FloatArray) -> FloatArray:
+        """Return the half-power corner of all together."""
+        ln_corner: FloatArray = parameters[:, 0] + self._ln_shrinkage
+        return ln_corner
+
+
+class TwoPole:
+    """``H = 1 / (1 + s/(Q w0) + (s/w0)^2)``; parameters ln f0 and ln Q."""
+
+    name = "two-pole"
+    parameters: tuple[str, ...] = ("ln_f0", "ln_q")
+
+    def evaluate(
+        self, parameters: FloatArray, ln_frequency: FloatArray
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return ln magnitude and its derivatives by ln f0 and ln Q."""
+        twice = np.clip(2.0 * (ln_frequency - parameters[:, :1]), -_FARTHEST, _FARTHEST)
+        ratio = np.exp(twice)
+        damping = np.exp(-2.0 * np.clip(parameters[:, 1:2], -50.0, 50.0))
+        size = (1.0 - ratio) ** 2 + ratio * damping
+        by_f0 = ratio * (damping - 2.0 * (1.0 - ratio)) / size
+        return -_HALF * np.log(size), np.stack([by_f0, ratio * damping / size], axis=2)
+
+    def start(self, ln_corner: FloatArray) -> FloatArray:
+        """Begin maximally flat."""
+        return np.stack([ln_corner, np.full_like(ln_corner, -_HALF * np.log(2.0))], axis=1)
+
+    def ln_corner(self, parameters: FloatArray) -> FloatArray:
+        """Return the last downward crossing of half power."""
+        inside = 1.0 - _HALF * np.exp(-2.0 * parameters[:, 1])
+        # For a < 0 the plain form a + sqrt(a^2 + 1) loses its digits.
+        root = np.sqrt(inside**2 + 1.0)
+        square = np.where(inside >= 0, inside + root, 1.0 / (root - np.minimum(inside, 0.0)))
+        ln_corner: FloatArray = parameters[:, 0] + _HALF * np.log(square)
+        return ln_corner
