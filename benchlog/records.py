@@ -320,4 +320,6 @@ class InstrumentUsed:
     calibration_due: str | None = None
 
 
-SweepState: TypeAlias = Literal["complete", "stopped", "failed", "unfinished"]
+SweepEnd: TypeAlias = Literal["complete", "stopped", "failed"]
+# What a reader may find: a sweep that a crash cut off has no end.
+SweepState: TypeAlias = SweepEnd | Literal["unfinished"]

@@ -11,7 +11,7 @@ from benchlog.bench.faces import SourceRole, SweepBench
 from benchlog.bench.perform import Performer, Progress, settle_time, time_model
 from benchlog.bench.stop import StopFlag
 from benchlog.errors import BenchlogError, InstrumentError, LinkLost, LinkTimeout, ReplyError
-from benchlog.records import Point, SweepState
+from benchlog.records import Point, SweepEnd
 from benchlog.sweep.actions import (
     Action,
     EndSweep,
@@ -45,7 +45,7 @@ class SweepResult:
             nothing did.
     """
 
-    state: SweepState
+    state: SweepEnd
     why: str
     points: tuple[Point, ...]
     recoveries: tuple[Recovery, ...]

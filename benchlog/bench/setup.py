@@ -5,6 +5,7 @@ from collections.abc import Callable
 from contextlib import ExitStack
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Literal, TypeAlias
 
 from benchlog.bench.clock import RealClock, StopSign
 from benchlog.bench.driver import Driver
@@ -20,6 +21,8 @@ from benchlog.quantity import decibel, level_vrms, ohm
 from benchlog.records import InstrumentUsed, Term
 from benchlog.sweep.limits import Band, BenchLimits
 from benchlog.tables import FileKind
+
+Role: TypeAlias = Literal["source", "input meter", "output meter"]
 
 # What the practice bench calls its maker; nothing that says so may ever pass for a measurement.
 PRACTICE_MAKER = "benchlog practice"
@@ -48,7 +51,7 @@ class Attenuator:
 class Place:
     """One instrument of the bench file: where it is and how to talk to it."""
 
-    role: str
+    role: Role
     address: str
     driver: Driver
     identity: str | None
@@ -156,10 +159,10 @@ class Bench:
 
     def instruments(self) -> tuple[InstrumentUsed, ...]:
         """Return the instruments as they are now, for the record of a sweep."""
-        used = [_used(self.setup.source, self.source.identity, "source")]
+        used = [_used(self.setup.source, self.source.identity)]
         if self.input_meter is not None and self.setup.input_meter is not None:
-            used.append(_used(self.setup.input_meter, self.input_meter.identity, "input meter"))
-        used.append(_used(self.setup.output_meter, self.output_meter.identity, "output meter"))
+            used.append(_used(self.setup.input_meter, self.input_meter.identity))
+        used.append(_used(self.setup.output_meter, self.output_meter.identity))
         return tuple(used)
 
     def close(self) -> None:
@@ -265,7 +268,7 @@ def _setup(file: BenchTables, text: str, *, folder: Path) -> BenchSetup:
     )
 
 
-def _place(table: SourceTable | MeterTable, role: str, *, wanted: str, folder: Path) -> Place:
+def _place(table: SourceTable | MeterTable, role: Role, *, wanted: str, folder: Path) -> Place:
     driver = read_driver(table.driver, folder=folder)
     key = role.replace(" ", "_")
     if driver.role != wanted:
@@ -319,9 +322,9 @@ def _attenuator(source: SourceTable) -> Attenuator:
     )
 
 
-def _used(place: Place, identity: str, role: str) -> InstrumentUsed:
+def _used(place: Place, identity: str) -> InstrumentUsed:
     return InstrumentUsed(
-        role=role,  # type: ignore[arg-type]  # one of the literal words by construction
+        role=place.role,
         identity=identity,
         address=place.address,
         driver=f"{place.driver.name} {place.driver.sha256[:12]}",

@@ -34,7 +34,7 @@ def print_json(data: object) -> None:
 
 def print_outcome(outcome: Outcome, *, large: bool = False) -> None:
     """Print a board for people: curve, figures, verdict line by line."""
-    from benchlog.report.tables import figures_table, verdict_table
+    from benchlog.report.tables import figure_words, figures_table, verdict_table
 
     mark = "   SIMULATED" if outcome.start.simulated else ""
     click.echo(f"\nserial {outcome.start.serial}   sweep {outcome.start.uuid[:8]}{mark}")
@@ -53,7 +53,7 @@ def print_outcome(outcome: Outcome, *, large: bool = False) -> None:
     click.echo(verdict_table(outcome.verdict))
     for line in outcome.verdict.lines:
         if line.reason:
-            click.echo(f"note: {line.figure}: {line.reason}")
+            click.echo(f"note: {figure_words(line.figure)}: {line.reason}")
     word = outcome.verdict.overall
     if large:
         click.echo(large_verdict(word, outcome.start.serial))

@@ -110,7 +110,7 @@ def measure(  # noqa: PLR0913 - bench, board, record: what one sweep takes
     if isinstance(result.error, LogbookError):
         _try_to_end(logbook, start.uuid, result.why)
     else:
-        logbook.end_sweep(start.uuid, result.state, result.why)  # type: ignore[arg-type]
+        logbook.end_sweep(start.uuid, result.state, result.why)
     outcome = Outcome(
         start=start,
         design=design,

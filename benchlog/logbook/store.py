@@ -8,7 +8,7 @@ import sqlite3
 from collections.abc import Iterable
 from contextlib import AbstractContextManager
 from pathlib import Path
-from typing import TYPE_CHECKING, Literal, Self, Unpack
+from typing import TYPE_CHECKING, Self, Unpack
 
 from benchlog.errors import Misuse
 from benchlog.logbook import history, read, write
@@ -25,7 +25,7 @@ from benchlog.logbook.rows import (
     StoredVerdict,
 )
 from benchlog.logbook.transaction import Writer
-from benchlog.records import Figures, Point, SweepStart, Verdict
+from benchlog.records import Figures, Point, SweepEnd, SweepStart, Verdict
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -126,9 +126,7 @@ class Logbook:
         kept = tuple(points)
         self._writer.write(lambda connection: write.add_points(connection, sweep, kept))
 
-    def end_sweep(
-        self, sweep: str, state: Literal["complete", "stopped", "failed"], why: str = ""
-    ) -> None:
+    def end_sweep(self, sweep: str, state: SweepEnd, why: str = "") -> None:
         """Write a sweep's end; after it the sweep takes no more points.
 
         Raises:

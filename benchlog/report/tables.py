@@ -49,20 +49,33 @@ def figures_table(figures: Figures) -> str:
 
 
 def verdict_table(verdict: Verdict) -> str:
-    """Write a verdict line by line."""
-    table = _table("line", "limits", "value", "U", "inside with", "verdict", "rule")
-    for line in verdict.lines:
+    """Write a verdict line by line, then the rule, or each line's own where they differ."""
+    table = _table("line", "limits", "value (u)", "U", "inside with", "verdict")
+    rules = [_rule(line) for line in verdict.lines]
+    for line, rule in zip(verdict.lines, rules, strict=True):
         probability = line.conformance_probability
+        own = f" ({rule})" if len(set(rules)) > 1 else ""
         table.add_row(
-            _SHOWN.get(line.figure, line.figure),
+            figure_words(line.figure),
             _limits(line),
             _value(line),
             "" if not line.U else si(line.U, line.unit, 2),
             "" if probability is None else _percent(probability),
-            line.verdict.upper(),
-            line.rule if line.rule == "simple" else f"{line.rule}, {plain(line.guard)} U",
+            line.verdict.upper() + own,
         )
-    return _rendered(table)
+    same = f"\nrule: {rules[0]}" if len(set(rules)) == 1 else ""
+    return _rendered(table) + same
+
+
+def figure_words(name: str) -> str:
+    """Return what people call a figure."""
+    return _SHOWN.get(name, name)
+
+
+def _rule(line: LineVerdict) -> str:
+    if line.rule == "simple":
+        return "simple"
+    return f"{line.rule}, guard band {plain(line.guard)} U"
 
 
 def history_table(rows: Sequence[HistoryRow]) -> str:

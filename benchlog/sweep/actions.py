@@ -3,7 +3,7 @@
 from dataclasses import dataclass
 from typing import Literal, TypeAlias
 
-from benchlog.records import Point, Reading, SweepState
+from benchlog.records import Point, Reading, SweepEnd
 
 Which: TypeAlias = Literal["input", "output"]
 
@@ -82,7 +82,7 @@ class EndSweep:
         source_off: False when the source could not be switched off.
     """
 
-    state: SweepState
+    state: SweepEnd
     why: str
     source_off: bool
 

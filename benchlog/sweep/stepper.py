@@ -7,7 +7,7 @@ rules stand in ``table.py`` and nowhere else.
 from collections.abc import Callable
 
 from benchlog.errors import Misuse
-from benchlog.records import Reading, SweepState
+from benchlog.records import Reading, SweepEnd
 from benchlog.sweep.actions import (
     Action,
     CheckErrors,
@@ -150,7 +150,7 @@ class Stepper:
         self._attempt = attempt
         self._readings = {}
 
-    def _decide(self, state: SweepState, why: str) -> None:
+    def _decide(self, state: SweepEnd, why: str) -> None:
         self._end = EndSweep(state=state, why=why, source_off=True)
 
     def _set_point(self) -> SetPoint:

@@ -42,7 +42,13 @@ def test_verdict_for_people_is_large_and_in_words(run: Run, folder: Path) -> Non
     ran = run("-C", folder, "sweep", "0001")
 
     assert ran.code == 0
-    for words in ("[ OK ] PASS   serial 0001", "SIMULATED", "#### ", "four-state, 1 U", "-3 dB"):
+    for words in (
+        "[ OK ] PASS   serial 0001",
+        "SIMULATED",
+        "#### ",
+        "four-state, guard band 1 U",
+        "-3 dB",
+    ):
         assert words in ran.out
 
 
