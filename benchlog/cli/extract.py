@@ -13,6 +13,7 @@ from benchlog.cli.street import add_design, design_of, exit_code, settle, stored
 @click.argument("sweeps", metavar="SWEEP...", nargs=-1, required=True)
 @design_option
 @logbook_option
+@click.option("--terms", is_flag=True, help="Show what each uncertainty is made of.")
 @json_option
 @click.pass_context
 def command(
@@ -21,6 +22,7 @@ def command(
     *,
     design_path: str | None,
     logbook_path: str | None,
+    terms: bool,
     as_json: bool,
 ) -> None:
     """Draw figures from stored points again, and judge them; the old rows stay.
@@ -36,5 +38,5 @@ def command(
             if design is not None:
                 add_design(logbook, design)
             outcomes.append(settle(logbook, stored_outcome(logbook, sweep, design)))
-    print_outcomes(outcomes, as_json=as_json)
+    print_outcomes(outcomes, as_json=as_json, terms=terms)
     context.exit(exit_code(outcomes))

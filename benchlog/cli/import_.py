@@ -237,5 +237,5 @@ def _preview(
         for name, value in capture.understood().items():
             click.echo(f"  {name:<12} {value}")
         _print_notes(path, capture)
-        print_outcome(outcome)
+        print_outcome(outcome, terms=True)
     click.echo("preview: nothing was kept")

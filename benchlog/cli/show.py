@@ -32,9 +32,9 @@ def print_json(data: object) -> None:
     click.echo(json.dumps(data, indent=2, allow_nan=False))
 
 
-def print_outcome(outcome: Outcome, *, large: bool = False) -> None:
-    """Print a board for people: curve, figures, verdict line by line."""
-    from benchlog.report.tables import figure_words, figures_table, verdict_table
+def print_outcome(outcome: Outcome, *, large: bool = False, terms: bool = False) -> None:
+    """Print a board for people: curve, figures, what their uncertainty is made of, verdict."""
+    from benchlog.report.tables import figure_words, figures_table, terms_table, verdict_table
 
     mark = "   SIMULATED" if outcome.start.simulated else ""
     click.echo(f"\nserial {outcome.start.serial}   sweep {outcome.start.uuid[:8]}{mark}")
@@ -45,6 +45,9 @@ def print_outcome(outcome: Outcome, *, large: bool = False) -> None:
         click.echo(f"{outcome.state.upper()}: {outcome.why}")
         return
     click.echo(figures_table(outcome.figures))
+    click.echo(f"shape: {outcome.figures.shape}. {outcome.figures.chosen_because}".rstrip())
+    if terms:
+        click.echo("\n" + terms_table(outcome.figures))
     for reason in outcome.figures.validity:
         click.echo(f"note: {reason.code}: {reason.text}")
     if outcome.verdict is None:
@@ -61,10 +64,10 @@ def print_outcome(outcome: Outcome, *, large: bool = False) -> None:
         click.echo(f"verdict: {word.upper()}")
 
 
-def print_outcomes(outcomes: Sequence[Outcome], *, as_json: bool) -> None:
+def print_outcomes(outcomes: Sequence[Outcome], *, as_json: bool, terms: bool = False) -> None:
     """Print boards, as one JSON array or one after another."""
     if as_json:
         print_json([outcome_json(outcome) for outcome in outcomes])
         return
     for outcome in outcomes:
-        print_outcome(outcome)
+        print_outcome(outcome, terms=terms)

@@ -1,6 +1,7 @@
 """Tables for the terminal; every number rounded to its uncertainty."""
 
 import io
+import math
 from collections.abc import Sequence
 
 from rich import box
@@ -46,6 +47,32 @@ def figures_table(figures: Figures) -> str:
         factor = f"{figure.k:.2f}" if figure.U else ""
         table.add_row(words, figure_text(figure), expanded, factor, largest)
     return _rendered(table)
+
+
+def terms_table(figures: Figures) -> str:
+    """Write the term tables side by side: the root sum of squares of each column is its u."""
+    drawn = {
+        name: figure
+        for name in ("gain_db", "lower_corner_hz", "corner_hz", "gbw_hz")
+        if (figure := figures.figure(name)) is not None and figure.u
+    }
+    causes = dict.fromkeys(term.name for figure in drawn.values() for term in figure.terms)
+    table = _table("cause of uncertainty", *(f"u of {figure_words(name)}" for name in drawn))
+    for cause in causes:
+        table.add_row(cause, *(_share(figure, cause) for figure in drawn.values()))
+    sums = (f"{si(figure.u or 0.0, figure.unit, 2)}" for figure in drawn.values())
+    table.add_row("together (root sum of squares)", *sums)
+    return _rendered(table)
+
+
+def _share(figure: Figure, cause: str) -> str:
+    """Write what one cause contributes, and its degrees of freedom where they are few."""
+    term = next((term for term in figure.terms if term.name == cause), None)
+    # A thousandth of the whole does not show in a root sum of squares.
+    if term is None or term.u < 1e-3 * (figure.u or 0.0):
+        return "-"
+    dof = f" (dof {term.dof:.0f})" if math.isfinite(term.dof) else ""
+    return f"{si(term.u, figure.unit, 2)}{dof}"
 
 
 def verdict_table(verdict: Verdict) -> str:
