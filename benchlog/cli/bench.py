@@ -8,9 +8,9 @@ from typing import TYPE_CHECKING
 import click
 
 from benchlog.cli.new import PRACTICE_PORTS
+from benchlog.cli.output import print_json
 from benchlog.cli.params import design_option, folder_of, json_option
 from benchlog.cli.place import DESIGN, read_folder_bench, read_folder_design
-from benchlog.cli.show import print_json
 from benchlog.errors import BenchlogError, ExitCode, InstrumentError
 
 if TYPE_CHECKING:

@@ -9,9 +9,10 @@ from typing import TYPE_CHECKING
 import click
 
 from benchlog.cli.new import bench_text, make_folder
+from benchlog.cli.output import print_json
 from benchlog.cli.params import json_option
 from benchlog.cli.place import BENCH, DESIGN, LOGBOOK
-from benchlog.cli.show import outcome_json, print_json
+from benchlog.cli.show import outcome_json
 from benchlog.cli.street import Outcome, People, open_logbook
 from benchlog.cli.sweep import Job
 from benchlog.errors import ExitCode

@@ -5,9 +5,9 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
+from benchlog.cli.output import print_json
 from benchlog.cli.params import folder_of, json_option
 from benchlog.cli.place import DESIGN
-from benchlog.cli.show import print_json
 
 if TYPE_CHECKING:
     from benchlog.design.model import Design

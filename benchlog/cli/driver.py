@@ -2,8 +2,8 @@
 
 import click
 
+from benchlog.cli.output import print_json
 from benchlog.cli.params import json_option
-from benchlog.cli.show import print_json
 from benchlog.errors import ExitCode
 
 

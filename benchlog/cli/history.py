@@ -5,9 +5,9 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from benchlog.cli.find import nearest_serials
+from benchlog.cli.output import print_json
 from benchlog.cli.params import SERIAL, json_option, logbook_option
 from benchlog.cli.place import open_existing
-from benchlog.cli.show import print_json
 from benchlog.errors import LogbookError
 from benchlog.records import VERDICT_ORDER
 

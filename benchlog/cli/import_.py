@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 import click
 
+from benchlog.cli.output import print_json
 from benchlog.cli.params import (
     SERIAL,
     design_option,
@@ -14,7 +15,7 @@ from benchlog.cli.params import (
     people_options,
 )
 from benchlog.cli.place import DESIGN, logbook_path, read_folder_design
-from benchlog.cli.show import outcome_json, print_json, print_outcome
+from benchlog.cli.show import outcome_json, print_outcome
 from benchlog.cli.street import (
     Outcome,
     People,

@@ -4,9 +4,9 @@ from dataclasses import asdict
 
 import click
 
+from benchlog.cli.output import print_json
 from benchlog.cli.params import json_option, logbook_option
 from benchlog.cli.place import open_existing
-from benchlog.cli.show import print_json
 
 
 @click.group(name="logbook", short_help="Tell what a logbook holds.")

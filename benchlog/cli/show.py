@@ -1,11 +1,11 @@
 """Showing what became of boards: tables and pictures for people, JSON for scripts."""
 
-import json
 from collections.abc import Sequence
 from typing import Any
 
 import click
 
+from benchlog.cli.output import print_json
 from benchlog.cli.street import Outcome
 from benchlog.report.board_json import board_json
 from benchlog.report.large import large_verdict
@@ -25,11 +25,6 @@ def outcome_json(outcome: Outcome) -> dict[str, Any]:
         verdict=outcome.verdict,
         why=outcome.why,
     )
-
-
-def print_json(data: object) -> None:
-    """Print strict JSON: no NaN, no infinity."""
-    click.echo(json.dumps(data, indent=2, allow_nan=False))
 
 
 def print_outcome(outcome: Outcome, *, large: bool = False, terms: bool = False) -> None:

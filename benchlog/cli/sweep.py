@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING
 
 import click
 
+from benchlog.cli.output import print_json
 from benchlog.cli.params import (
     HERTZ,
     LEVEL,
@@ -21,7 +22,7 @@ from benchlog.cli.params import (
 )
 from benchlog.cli.place import logbook_path, read_folder_bench, read_folder_design
 from benchlog.cli.progress import SweepProgress
-from benchlog.cli.show import outcome_json, print_json, print_outcome
+from benchlog.cli.show import outcome_json, print_outcome
 from benchlog.cli.street import (
     Outcome,
     People,
