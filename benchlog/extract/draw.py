@@ -4,8 +4,8 @@ import numpy as np
 
 from benchlog.curve import FloatArray
 from benchlog.extract.implied import Implied
-from benchlog.extract.landmarks import Landmark, bandwidth, peak, signal_gbw
-from benchlog.extract.reduce import Reduced
+from benchlog.extract.landmarks import Landmark, bandwidth, crossover, peak, signal_gbw, unity
+from benchlog.extract.reduce import Data, Reduced
 
 
 def drawn(reduced: Reduced, implied: Implied | None) -> dict[str, Landmark]:
@@ -30,9 +30,19 @@ def drawn(reduced: Reduced, implied: Implied | None) -> dict[str, Landmark]:
         else _through_design(reduced, implied, by_gain),
         "peaking_db": height,
         "peaking_hz": place,
+        "unity_hz": _in_sweep(unity(reduced.shape, parameters), reduced.data),
     }
 
 
+def _in_sweep(crossing: Landmark, data: Data) -> Landmark:
+    """Return a crossing only where the sweep reaches it: beyond, it is the shape's claim."""
+    counts = data.weight > 0
+    highest = np.where(counts, data.ln_frequency, -np.inf).max(axis=1, initial=-np.inf)
+    reached = crossing.ln_value <= highest
+    return Landmark(ln_value=np.where(reached, crossing.ln_value, np.nan), by=crossing.by)
+
+
 def _through_design(reduced: Reduced, implied: Implied, by_gain: FloatArray) -> Landmark:
-    by = implied.by_gain[:, None] * by_gain + implied.by_corner[:, None] * reduced.upper.by
+    crossing = crossover(reduced.shape, reduced.fit.parameters)
+    by = implied.by_gain[:, None] * by_gain + implied.by_corner[:, None] * crossing.by
     return Landmark(ln_value=implied.ln_gbw, by=by)

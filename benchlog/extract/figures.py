@@ -21,6 +21,14 @@ from benchlog.extract.reduce import (
     too_few,
 )
 from benchlog.extract.sentences import reasons_of
+from benchlog.extract.through_design import (
+    PARTS,
+    ThroughDesign,
+    at_least,
+    corner_is_the_amplifiers,
+    gbw_through_design,
+    has_noise_gain,
+)
 from benchlog.extract.told import seen_of, tried, why
 from benchlog.extract.uncertainty import Cause, figure, scatter_cause, shares_of, term_causes
 from benchlog.extract.validity import FIGURES_TAKEN, Fault
@@ -31,6 +39,8 @@ METHOD = "2"
 _DB_PER_NEPER = 20.0 / math.log(10.0)
 _UNITS = {"gain": "V/V", "gain_db": "dB", "peaking_db": "dB"}
 CHOICE = "choice of shape"
+_UNREACHED = Fault.CORNER_ABOVE_SWEEP | Fault.FEW_PAST_CORNER
+_USELESS = Fault.TOO_FEW_POINTS | Fault.NOT_CONVERGED | Fault.POOR_FIT | Fault.PLATEAU_NOT_REACHED
 
 
 def extract(curve: GainCurve, design: Design | None = None, *, shape: str = "auto") -> Figures:
@@ -85,26 +95,38 @@ class _Drawing:
             ),
         ]
         self.faults = int(reduced.faults[0])
-        self.implied = self._implied(design)
-        self.basis: Literal["design", "signal gain"] = (
-            "signal gain" if self.implied is None else "design"
-        )
+        self.design = design if has_noise_gain(design) else None
+        self.basis: Literal["design", "signal gain"] = "design" if self.design else "signal gain"
+        self.implied = self._implied()
         self.landmarks = drawn(reduced, self.implied)
         if not self.faults and self.implied is not None:
             self.faults |= int(gbw_faults(self.implied)[0])
-        if self.implied is None and not np.isfinite(self.landmarks["gbw_hz"].ln_value[0]):
+        if self.design is None and not np.isfinite(self.landmarks["gbw_hz"].ln_value[0]):
             self.faults |= int(Fault.GBW_NEEDS_DESIGN)
 
-    def _implied(self, design: Design | None) -> Implied | None:
-        if design is None or not design.chain().figure_stages:
+    def _implied(self) -> Implied | None:
+        """Return the GBW that the corner alone tells, where it does."""
+        if self.design is None or not corner_is_the_amplifiers(self.design.chain()):
             return None
         by_gain = np.zeros(len(self.reduced.shape.parameters))
         by_gain[0] = 1.0
         u_ln_gain = math.sqrt(sum(cause.share(by_gain) ** 2 for cause in self.causes))
         source_ohm = 0.0 if self.curve.reference == "input" else (self.curve.source_ohm or 0.0)
         return implied_gbw(
-            self.reduced, design, u_ln_gain=np.array([u_ln_gain]), source_ohm=source_ohm
+            self.reduced, self.design, u_ln_gain=np.array([u_ln_gain]), source_ohm=source_ohm
         )
+
+    def _through(self) -> ThroughDesign:
+        """Return the GBW that the whole curve tells, where the corner alone does not."""
+        unreached = bool(self.faults & _UNREACHED)
+        if self.design is None or (self.implied is not None and not unreached):
+            return ThroughDesign(figure=None, faults=0, hidden_by="")
+        if self.faults & _USELESS:
+            return ThroughDesign(figure=None, faults=0, hidden_by="")
+        through = gbw_through_design(self.curve, self.design, self.reduced)
+        if not unreached:
+            return through
+        return replace(through, figure=at_least(through.figure), faults=0)
 
     def figures(
         self, choice: Choice, runner_up: "_Drawing | None", *, left_out: tuple[int, ...]
@@ -116,8 +138,12 @@ class _Drawing:
             runner_up: The same for the next best shape, where that one is still likely.
             left_out: Places of the points that were not fitted.
         """
-        faults = self.faults | (int(Fault.WILD_POINT) if choice.wild.any() else 0)
-        reasons = reasons_of(faults, seen_of(self.curve, choice, self.reduced))
+        through = self._through()
+        faults = self.faults | through.faults
+        faults |= int(Fault.WILD_POINT) if choice.wild.any() else 0
+        reasons = reasons_of(
+            faults, replace(seen_of(self.curve, choice, self.reduced), hidden_by=through.hidden_by)
+        )
         taken = {name for reason in reasons for name in reason.figures}
         named = self._named()
         others = {} if runner_up is None else runner_up.ln_values()
@@ -125,9 +151,12 @@ class _Drawing:
             name: None if name in taken else self._figure(name, one, others.get(name))
             for name, one in named.items()
         }
+        if self.design is not None and self.implied is None:
+            made["gbw_hz"] = None
+        made["gbw_hz"] = through.figure or made["gbw_hz"]
         if "peaking_db" not in taken and made["peaking_db"] is None:
             made["peaking_db"] = figure(0.0, "dB", ())
-        if faults & (Fault.CORNER_ABOVE_SWEEP | Fault.FEW_PAST_CORNER) and made["gain"]:
+        if faults & _UNREACHED and made["gain"]:
             made["corner_hz"] = self._at_least()
             made["bandwidth_hz"] = made["corner_hz"] if self.reduced.lower is None else None
         return replace(
@@ -135,6 +164,7 @@ class _Drawing:
                 shape=self.reduced.shape.name,
                 validity=reasons,
                 gbw_basis=self.basis if made["gbw_hz"] else None,
+                limited_by=through.hidden_by or None,
                 shapes_tried=tried(choice),
                 chosen_because=why(choice),
                 method=METHOD,
@@ -171,9 +201,7 @@ class _Drawing:
         shares = shares_of(self.causes, one.by[0], scale=scale)
         if name == "gbw_hz" and self.implied is not None:
             u_parts = scale * float(self.implied.u_parts[0])
-            shares.append(
-                TermShare(name="tolerance of the parts", u=u_parts, dof=math.inf, kind="B")
-            )
+            shares.append(TermShare(name=PARTS, u=u_parts, dof=math.inf, kind="B"))
         if other_ln is not None:
             apart = scale * abs(other_ln - ln_value)
             shares.append(TermShare(name=CHOICE, u=apart, dof=math.inf, kind="B"))

@@ -64,6 +64,18 @@ def peak(shape: Composed, parameters: FloatArray) -> tuple[Landmark, Landmark]:
     return Landmark(ln_value=height, by=by_height), Landmark(ln_value=place, by=by_place)
 
 
+def crossover(shape: Composed, parameters: FloatArray) -> Landmark:
+    """Return where gain times frequency is the GBW over the noise gain: of two poles Q f0.
+
+    The corner of two poles is up to 1.6 times as high, and no measure of the amplifier.
+    """
+    if not isinstance(shape.rolloff, TwoPole):
+        return upper_corner(shape, parameters)
+    by = np.zeros_like(parameters)
+    by[:, 1:3] = 1.0
+    return Landmark(ln_value=parameters[:, 1] + parameters[:, 2], by=by)
+
+
 def signal_gbw(shape: Composed, parameters: FloatArray) -> Landmark:
     """Return what stands for the GBW without a design; NaN for a shape that has no such thing.
 
@@ -80,6 +92,16 @@ def signal_gbw(shape: Composed, parameters: FloatArray) -> Landmark:
     return Landmark(ln_value=(parameters * by).sum(axis=1), by=by)
 
 
+def unity(shape: Composed, parameters: FloatArray) -> Landmark:
+    """Return where the response last falls through a gain of one; NaN where it is never above."""
+    ln_gain = parameters[:, 0]
+    # Far up the response is its asymptote, which is where Newton's steps come from.
+    alone = shape.rolloff.ln_corner(shape.upper(parameters))
+    start = alone + np.maximum(ln_gain, 0.0) / shape.rolloff.poles + 1.0
+    ln_f = _settled(shape, parameters, start, level=-ln_gain)
+    return _implicit(shape, parameters, np.where(ln_gain > 0, ln_f, np.nan), absolute=True)
+
+
 def bandwidth(upper: Landmark, lower: Landmark | None) -> Landmark:
     """Return upper minus lower corner."""
     if lower is None:
@@ -90,7 +112,13 @@ def bandwidth(upper: Landmark, lower: Landmark | None) -> Landmark:
     return Landmark(ln_value=upper.ln_value + np.log(rest), by=by)
 
 
-def _settled(shape: Composed, parameters: FloatArray, ln_start: FloatArray) -> FloatArray:
+def _settled(
+    shape: Composed,
+    parameters: FloatArray,
+    ln_start: FloatArray,
+    *,
+    level: FloatArray | float = -_LN_ROOT_TWO,
+) -> FloatArray:
     """Move from an edge's own corner to the whole response's, by Newton's steps from outside.
 
     Outside the crossing the response is concave in these logarithms, so that the steps come from
@@ -99,31 +127,44 @@ def _settled(shape: Composed, parameters: FloatArray, ln_start: FloatArray) -> F
     ln_f = ln_start.copy()
     with np.errstate(all="ignore"):
         for _ in range(_MOST_STEPS):
-            height, slope = _height(shape, parameters, ln_f)
+            height, slope = _height(shape, parameters, ln_f, level=level)
             move = height / slope
             ln_f = ln_f - np.clip(move, -2.0, 2.0)
             if np.nanmax(np.abs(move), initial=0.0) < 1e-12:
                 break
-        height, slope = _height(shape, parameters, ln_f)
+        height, slope = _height(shape, parameters, ln_f, level=level)
     away = ~(np.abs(height) < 1e-9) | ~(np.abs(slope) > 1e-3)
     return np.where(away, np.nan, ln_f)
 
 
 def _height(
-    shape: Composed, parameters: FloatArray, ln_f: FloatArray
+    shape: Composed,
+    parameters: FloatArray,
+    ln_f: FloatArray,
+    *,
+    level: FloatArray | float = -_LN_ROOT_TWO,
 ) -> tuple[FloatArray, FloatArray]:
-    """Return ln of the response over plateau/sqrt(2) and its slope, each shape (sweeps,)."""
+    """Return ln of the response over a level beside the plateau, and its slope, (sweeps,)."""
     around = ln_f[:, None] + np.array([[-_STEP, 0.0, _STEP]])
     values, _ = shape.evaluate(parameters, around)
     slope = (values[:, 2] - values[:, 0]) / (2.0 * _STEP)
-    return values[:, 1] - parameters[:, 0] + _LN_ROOT_TWO, slope
+    return values[:, 1] - parameters[:, 0] - level, slope
 
 
-def _implicit(shape: Composed, parameters: FloatArray, ln_f: FloatArray) -> Landmark:
-    """Return a crossing with its derivatives, by the theorem of implicit functions."""
+def _implicit(
+    shape: Composed, parameters: FloatArray, ln_f: FloatArray, *, absolute: bool = False
+) -> Landmark:
+    """Return a crossing with its derivatives, by the theorem of implicit functions.
+
+    Args:
+        shape: Of the fit.
+        parameters: Shape (sweeps, parameters).
+        ln_f: Where the crossing is.
+        absolute: Whether it is of a fixed gain, not of one relative to the plateau.
+    """
     with np.errstate(all="ignore"):
         _, slope = _height(shape, parameters, ln_f)
         _, by = shape.evaluate(parameters, ln_f[:, None])
         moved = by[:, 0, :].copy()
-        moved[:, 0] -= 1.0
+        moved[:, 0] -= 0.0 if absolute else 1.0
         return Landmark(ln_value=ln_f, by=-moved / slope[:, None])

@@ -5,12 +5,15 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
-from benchlog.curve import FloatArray, FloatsLike
+from benchlog.curve import FloatArray, FloatsLike, GainCurve
 from benchlog.design.model import Design
 from benchlog.errors import CurveError
 from benchlog.extract.choose import choose, shape_named
 from benchlog.extract.draw import drawn
+from benchlog.extract.figures import extract
 from benchlog.extract.reduce import Data, Reduced, gbw_faults, implied_gbw, prepare, too_few
+from benchlog.extract.sentences import faults_behind
+from benchlog.extract.through_design import corner_is_the_amplifiers, has_noise_gain
 from benchlog.extract.validity import FIGURES_TAKEN, Fault
 
 _DB_PER_NEPER = 20.0 / np.log(10.0)
@@ -25,6 +28,7 @@ FIGURES = (
     "gbw_hz",
     "peaking_db",
     "peaking_hz",
+    "unity_hz",
 )
 
 
@@ -85,8 +89,12 @@ def _data(frequency_hz: FloatArray, gain: FloatArray, u_gain_rel: FloatArray | N
 def _chunk(data: Data, design: Design | None, shape: str) -> dict[str, npt.NDArray[Any]]:
     choice = choose(data, design, shape=shape)
     needed = set(choice.chosen.tolist()) | set(choice.runner_up.tolist()) - {-1}
-    through = design if design is not None and design.chain().figure_stages else None
-    by_shape = {place: _of_shape(choice.tried[place], through) for place in sorted(needed)}
+    through = design if has_noise_gain(design) else None
+    by_corner = through is None or corner_is_the_amplifiers(through.chain())
+    by_shape = {
+        place: _of_shape(choice.tried[place], through if by_corner else None)
+        for place in sorted(needed)
+    }
     rows = len(choice.chosen)
     answer: dict[str, npt.NDArray[Any]] = {
         "validity": _taken(by_shape, choice.chosen, "validity").astype(np.int64),
@@ -99,7 +107,32 @@ def _chunk(data: Data, design: Design | None, shape: str) -> dict[str, npt.NDArr
         other = _taken(by_shape, choice.runner_up, name)
         apart = np.where(np.isfinite(other), other - value, 0.0)
         answer[name], answer[f"u_{name}"] = value, np.hypot(u, apart)
+    if through is not None and not by_corner:
+        _gbw_one_by_one(answer, data, through, shape=shape)
     return answer
+
+
+def _gbw_one_by_one(
+    answer: dict[str, npt.NDArray[Any]], data: Data, design: Design, *, shape: str
+) -> None:
+    """Take GBW and validity from ``extract``, where the whole curve is needed for the GBW."""
+    for row, weight in enumerate(data.weight):
+        answer["gbw_hz"][row] = answer["u_gbw_hz"][row] = np.nan
+        counts = weight > 0
+        if not counts.any():
+            continue
+        figures = extract(
+            GainCurve(
+                np.exp(data.ln_frequency[row][counts]),
+                np.exp(data.ln_gain[row][counts]),
+                u_gain_rel=weight[counts] ** -0.5 if data.stated else None,
+            ),
+            design,
+            shape=shape,
+        )
+        answer["validity"][row] = faults_behind(figures.validity)
+        if figures.gbw_hz is not None and figures.gbw_hz.u is not None:
+            answer["gbw_hz"][row], answer["u_gbw_hz"][row] = figures.gbw_hz.value, figures.gbw_hz.u
 
 
 def _taken(

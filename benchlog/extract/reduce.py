@@ -8,7 +8,7 @@ import numpy.typing as npt
 from benchlog.curve import FloatArray
 from benchlog.design.model import Design
 from benchlog.extract.implied import DesignGbw, Implied
-from benchlog.extract.landmarks import Landmark, lower_corner, upper_corner
+from benchlog.extract.landmarks import Landmark, crossover, lower_corner, upper_corner
 from benchlog.extract.models.composed import Composed
 from benchlog.extract.robust import most_wild_points, worst_point
 from benchlog.extract.solve import Fit, solve
@@ -177,7 +177,8 @@ def implied_gbw(
 ) -> Implied:
     """Return the GBW that gains and corners imply through the design's noise gain."""
     ln_gain = reduced.fit.parameters[:, 0]
-    return DesignGbw(design.chain(), source_ohm).of(ln_gain, reduced.upper.ln_value, u_ln_gain)
+    crossing = crossover(reduced.shape, reduced.fit.parameters)
+    return DesignGbw(design.chain(), source_ohm).of(ln_gain, crossing.ln_value, u_ln_gain)
 
 
 def gbw_faults(implied: Implied) -> npt.NDArray[np.int64]:

@@ -41,7 +41,8 @@ _SENTENCES: dict[Fault, tuple[str, str]] = {
     ),
     Fault.GBW_HIDDEN: (
         "GBW hidden",
-        "No gain-bandwidth product gives the design this corner: another element sets it.",
+        "{hidden} sets the corner: the curve would look the same with a faster amplifier, so that"
+        " at best a lower bound can be given.",
     ),
     Fault.NOISE_GAIN_MEASURED: (
         "noise gain from the measured gain",
@@ -83,6 +84,7 @@ class Seen:
     past_corner: int
     wild_hz: tuple[float, ...] = ()
     shape: str = "one-pole"
+    hidden_by: str = ""
 
     def words(self) -> dict[str, str]:
         """Return what the sentences' fields stand for."""
@@ -96,6 +98,7 @@ class Seen:
             "tenth": si(self.corner_hz / 10.0, "Hz"),
             "wild": ", ".join(si(hz, "Hz") for hz in self.wild_hz),
             "shape": self.shape,
+            "hidden": self.hidden_by or "Another element",
         }
 
 
@@ -107,3 +110,9 @@ def reasons_of(faults: int, seen: Seen) -> tuple[Reason, ...]:
         for fault, (code, text) in _SENTENCES.items()
         if faults & fault
     )
+
+
+def faults_behind(reasons: tuple[Reason, ...]) -> int:
+    """Return the bits of the faults that gave these reasons."""
+    codes = {reason.code for reason in reasons}
+    return sum(int(fault) for fault, (code, _) in _SENTENCES.items() if code in codes)

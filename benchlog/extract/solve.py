@@ -23,6 +23,19 @@ _LEAST_DAMPING = 1e-12
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Prior:
+    """What is known of the parameters before the sweep.
+
+    Attributes:
+        centre: Shape (sweeps, parameters).
+        weight: Inverse variance, 0 where nothing is known, shape (parameters,).
+    """
+
+    centre: FloatArray
+    weight: FloatArray
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Fit:
     """Fitted parameters of many sweeps.
 
@@ -32,7 +45,7 @@ class Fit:
             variances, shape (sweeps, parameters, parameters).
         derivatives: Of ln gain by the parameters at the fit, shape (sweeps, points, parameters).
         residuals: Measured minus fitted ln gain, zero where the weight is zero.
-        chi2: Weighted sum of squares, shape (sweeps,).
+        chi2: Weighted sum of squares, the prior's included, shape (sweeps,).
         count: Points that count, shape (sweeps,).
         converged: Whether the last step was negligible, shape (sweeps,).
     """
@@ -45,6 +58,19 @@ class Fit:
     count: npt.NDArray[np.int64]
     converged: npt.NDArray[np.bool_]
 
+    def row(self, place: int) -> "Fit":
+        """Return the fit of one sweep."""
+        one = slice(place, place + 1)
+        return Fit(
+            parameters=self.parameters[one],
+            inverse_normal=self.inverse_normal[one],
+            derivatives=self.derivatives[one],
+            residuals=self.residuals[one],
+            chi2=self.chi2[one],
+            count=self.count[one],
+            converged=self.converged[one],
+        )
+
 
 def solve(
     shape: Shape,
@@ -53,6 +79,7 @@ def solve(
     *,
     weight: FloatArray,
     start: FloatArray | None = None,
+    prior: Prior | None = None,
 ) -> Fit:
     """Fit one shape to many sweeps.
 
@@ -62,6 +89,7 @@ def solve(
         ln_gain: Same shape.
         weight: Inverse variance of ln gain, or 1 where it is not known, shape (sweeps, points).
         start: First guess, shape (sweeps, parameters); the shape's own by default.
+        prior: Counts like one more point for each parameter that it knows.
 
     Returns:
         The fits; where one did not converge the flag says so.
@@ -69,7 +97,8 @@ def solve(
     used = (weight > 0).astype(float)
     x = np.where(weight > 0, ln_frequency, 0.0)
     y = np.where(weight > 0, ln_gain, 0.0)
-    state = _State(shape, x, y, weight, shape.start(x, y, used) if start is None else start)
+    first = shape.start(x, y, used) if start is None else start
+    state = _State(shape, x, y, weight=weight, start=first, prior=prior)
     for _ in range(_MOST_STEPS):
         if not state.step():
             break
@@ -79,10 +108,17 @@ def solve(
 class _State:
     """Where each sweep's search stands."""
 
-    def __init__(  # noqa: PLR0917 - the arrays of one problem
-        self, shape: Shape, x: FloatArray, y: FloatArray, weight: FloatArray, start: FloatArray
+    def __init__(
+        self,
+        shape: Shape,
+        x: FloatArray,
+        y: FloatArray,
+        *,
+        weight: FloatArray,
+        start: FloatArray,
+        prior: Prior | None,
     ) -> None:
-        self.shape, self.x, self.y, self.weight = shape, x, y, weight
+        self.shape, self.x, self.y, self.weight, self.prior = shape, x, y, weight, prior
         self.parameters = start.copy()
         self.damping = np.full(len(start), _FIRST_DAMPING)
         self.moving = np.ones(len(start), np.bool_)
@@ -96,6 +132,9 @@ class _State:
         weighted = self.derivatives[rows] * self.weight[rows, :, None]
         normal = np.swapaxes(weighted, 1, 2) @ self.derivatives[rows]
         slope = (weighted * self.residuals[rows, :, None]).sum(axis=1)
+        if self.prior is not None:
+            np.einsum("spp->sp", normal)[:] += self.prior.weight
+            slope += self.prior.weight * (self.prior.centre[rows] - self.parameters[rows])
         # Scaled to a diagonal of one, no parameter's size or lack of effect spoils the solution.
         scale = np.sqrt(np.einsum("spp->sp", normal))
         scale = np.where(scale > 0, scale, 1.0)
@@ -133,10 +172,16 @@ class _State:
     ) -> tuple[FloatArray, FloatArray, FloatArray]:
         values, derivatives = self.shape.evaluate(parameters, self.x[rows])
         residuals = np.where(self.weight[rows] > 0, self.y[rows] - values, 0.0)
-        return residuals, derivatives, (self.weight[rows] * residuals**2).sum(axis=1)
+        chi2 = (self.weight[rows] * residuals**2).sum(axis=1)
+        if self.prior is not None:
+            away = parameters - self.prior.centre[rows]
+            chi2 += (self.prior.weight * away**2).sum(axis=1)
+        return residuals, derivatives, chi2
 
     def fit(self) -> Fit:
         normal = np.swapaxes(self.derivatives * self.weight[:, :, None], 1, 2) @ self.derivatives
+        if self.prior is not None:
+            np.einsum("spp->sp", normal)[:] += self.prior.weight
         return Fit(
             parameters=self.parameters,
             inverse_normal=_inverse(normal),

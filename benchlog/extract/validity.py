@@ -25,7 +25,15 @@ NO_BAND_RATIO = 2.41
 NARROW_RATIO = 30.0
 
 _OF_CORNER = ("corner_hz", "bandwidth_hz", "gbw_hz")
-_ALL = ("gain", "gain_db", "peaking_db", "peaking_hz", "lower_corner_hz", *_OF_CORNER)
+_ALL = (
+    "gain",
+    "gain_db",
+    "peaking_db",
+    "peaking_hz",
+    "unity_hz",
+    "lower_corner_hz",
+    *_OF_CORNER,
+)
 
 
 class Fault(enum.IntFlag):
@@ -53,7 +61,7 @@ FIGURES_TAKEN: dict[Fault, tuple[str, ...]] = {
     Fault.NOT_CONVERGED: _ALL,
     Fault.POOR_FIT: _ALL,
     Fault.PLATEAU_NOT_REACHED: _ALL,
-    Fault.CORNER_ABOVE_SWEEP: (*_OF_CORNER, "peaking_db", "peaking_hz"),
+    Fault.CORNER_ABOVE_SWEEP: (*_OF_CORNER, "peaking_db", "peaking_hz", "unity_hz"),
     Fault.FEW_PAST_CORNER: _OF_CORNER,
     Fault.NOISE_GAIN_UNKNOWN: ("gbw_hz",),
     Fault.GBW_HIDDEN: ("gbw_hz",),

@@ -209,3 +209,20 @@ def test_no_gbw_without_a_design_for_equal_poles() -> None:
     figures = extract(GainCurve(SWEPT, response("3-equal-poles")[0]), shape="3-equal-poles")
     assert figures.gbw_hz is None
     assert "GBW needs a design" in [reason.code for reason in figures.validity]
+
+
+@pytest.mark.parametrize("name", ["one-pole", "two-pole", "3-equal-poles"])
+def test_unity_crossing(name: str) -> None:
+    """Where the sweep reaches a gain of one, that is a figure with its uncertainty; else none."""
+    wide: FloatArray = np.logspace(0, 8, 81)
+    shape, centre = shape_named(name), np.log(TRUTH[name])[None, :]
+    values, _ = shape.evaluate(centre, np.log(wide)[None, :])
+    figures = extract(GainCurve(wide, np.exp(values[0])), shape=name)
+    assert figures.unity_hz is not None
+    at, _ = shape.evaluate(centre, np.log([[figures.unity_hz.value]]))
+    assert at[0, 0] == pytest.approx(0.0, abs=1e-7)
+    assert extract(GainCurve(SWEPT[:-8], response(name)[0, :-8]), shape=name).unity_hz is None
+    rows = np.exp(values + 2e-3 * np.random.default_rng(17).standard_normal((500, wide.size)))
+    got = extract_many(wide, rows, shape=name)
+    inside = np.abs(got["unity_hz"] - figures.unity_hz.value) < 2 * got["u_unity_hz"]
+    assert 0.92 < inside.mean() < 0.98

@@ -28,6 +28,11 @@ class Rolloff(Protocol):
         """Names of the parameters."""
         ...
 
+    @property
+    def poles(self) -> int:
+        """How many poles there are: the slope far above the corner."""
+        ...
+
     def evaluate(
         self, parameters: FloatArray, ln_frequency: FloatArray
     ) -> tuple[FloatArray, FloatArray]:
@@ -47,6 +52,7 @@ class OnePole:
     """``|H| = 1 / sqrt(1 + (f/fc)^2)``."""
 
     name = "one-pole"
+    poles = 1
     parameters: tuple[str, ...] = ("ln_corner",)
 
     def evaluate(
@@ -75,7 +81,7 @@ class EqualPoles:
     parameters: tuple[str, ...] = ("ln_pole",)
 
     def __init__(self, count: int) -> None:
-        self.count = count
+        self.poles = count
         self.name = f"{count}-equal-poles"
         self._ln_shrinkage = _HALF * float(np.log(2.0 ** (1.0 / count) - 1.0))
 
@@ -84,8 +90,8 @@ class EqualPoles:
     ) -> tuple[FloatArray, FloatArray]:
         """Return ln magnitude and its derivative by the logarithm of the pole."""
         twice = 2.0 * (ln_frequency - parameters[:, :1])
-        values = -_HALF * self.count * np.logaddexp(0.0, twice)
-        return values, self.count * expit(twice)[:, :, None]
+        values = -_HALF * self.poles * np.logaddexp(0.0, twice)
+        return values, self.poles * expit(twice)[:, :, None]
 
     def start(self, ln_corner: FloatArray) -> FloatArray:
         """Put the poles where together they have the corner."""
@@ -101,6 +107,7 @@ class TwoPole:
     """``H = 1 / (1 + s/(Q w0) + (s/w0)^2)``; parameters ln f0 and ln Q."""
 
     name = "two-pole"
+    poles = 2
     parameters: tuple[str, ...] = ("ln_f0", "ln_q")
 
     def evaluate(
