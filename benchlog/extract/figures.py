@@ -96,7 +96,7 @@ class _Drawing:
         ]
         self.faults = int(reduced.faults[0])
         self.design = design if has_noise_gain(design) else None
-        self.basis: Literal["design", "signal gain"] = "design" if self.design else "signal gain"
+        self.basis: Literal["design", "signal gain"] = "signal gain" if design is None else "design"
         self.implied = self._implied()
         self.landmarks = drawn(reduced, self.implied)
         if not self.faults and self.implied is not None:

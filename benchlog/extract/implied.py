@@ -102,9 +102,9 @@ class DesignGbw:
 
     def _plateau_slopes(self) -> FloatArray:
         """Return derivatives of the plateau's logarithm by the logarithm of each part."""
-        ends = np.concatenate([np.eye(len(self._names)), -np.eye(len(self._names))]) * _SMALL
         if not self._names:
             return np.zeros(0)
+        ends = np.concatenate([np.eye(len(self._names)), -np.eye(len(self._names))]) * _SMALL
         up, down = np.log(self._plateaus(ends)).reshape(2, -1)
         slopes: FloatArray = (up - down) / (2 * _SMALL)
         return slopes
@@ -121,7 +121,7 @@ class DesignGbw:
         for place in range(count + 1):
             moves[2 * place + 1, place], moves[2 * place + 2, place] = _SMALL, -_SMALL
         corners = (ln_corner[None, :] + moves[:, :1]).reshape(-1)
-        moved = (parts[None, :, :] + moves[:, None, 1:]).reshape(-1, count)
+        moved = (parts[None, :, :] + moves[:, None, 1:]).reshape(corners.size, count)
         solved = self._solve(corners, moved).reshape(len(moves), -1)
         slopes = (solved[1::2] - solved[2::2]) / (2 * _SMALL)
         return solved[0], slopes[0], slopes[1:].T

@@ -84,6 +84,7 @@ class GbwProfile:
         beyond = chi2[grid >= ln_best + np.log(_WITHIN)].min(initial=np.inf)
         number = bool(
             fit.converged[0]
+            and np.isfinite(fit.inverse_normal).all()
             and beside[0] > lowest + _RISE_TWO_SIDED
             and min(beside[1], beyond) > lowest + _RISE_TWO_SIDED
         )

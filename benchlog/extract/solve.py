@@ -20,6 +20,8 @@ _FALL_TOLERANCE = 1e-14
 _LONGEST_STEP = 1.0
 _FIRST_DAMPING = 1e-3
 _LEAST_DAMPING = 1e-12
+# Of the normal matrix with a diagonal of one; below it an inverse has no digits left.
+_LEAST_EIGENVALUE = 1e-13
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -199,7 +201,8 @@ def _inverse(normal: FloatArray) -> FloatArray:
     known = (scale > 0).all(axis=1)
     safe = np.where(scale > 0, scale, 1.0)
     scaled = normal / safe[:, :, None] / safe[:, None, :]
-    known &= np.abs(np.linalg.det(scaled)) > 1e-14
+    scaled[~known] = np.eye(normal.shape[1])
+    known &= np.linalg.eigvalsh(scaled)[:, 0] > _LEAST_EIGENVALUE
     scaled[~known] = np.eye(normal.shape[1])
     inverse: FloatArray = np.linalg.inv(scaled) / safe[:, :, None] / safe[:, None, :]
     inverse[~known] = np.inf
