@@ -15,7 +15,10 @@ from benchlog.extract.models.shape import Shape
 _MOST_STEPS = 60
 # Parameters are logarithms: this is a relative change far below any uncertainty.
 _STEP_TOLERANCE = 1e-11
-_FALL_TOLERANCE = 1e-14
+# Such a fall is a step of less than a millionth of the uncertainty; the next is far smaller.
+_FALL_TOLERANCE = 1e-13
+# Sums of squares of logarithms below this are rounding.
+_NOTHING = 1e-26
 # A parameter moves by no more than a factor e in one step.
 _LONGEST_STEP = 1.0
 _FIRST_DAMPING = 1e-3
@@ -122,6 +125,7 @@ class _State:
     ) -> None:
         self.shape, self.x, self.y, self.weight, self.prior = shape, x, y, weight, prior
         self.parameters = start.copy()
+        self.floor = _NOTHING * weight.sum(axis=1)
         self.damping = np.full(len(start), _FIRST_DAMPING)
         self.moving = np.ones(len(start), np.bool_)
         self.residuals, self.derivatives, self.chi2 = self._at(np.arange(len(start)), start)
@@ -131,9 +135,11 @@ class _State:
         rows = np.flatnonzero(self.moving)
         if rows.size == 0:
             return False
-        weighted = self.derivatives[rows] * self.weight[rows, :, None]
-        normal = np.swapaxes(weighted, 1, 2) @ self.derivatives[rows]
-        slope = (weighted * self.residuals[rows, :, None]).sum(axis=1)
+        every = rows.size == len(self.parameters)
+        which: slice | npt.NDArray[np.int64] = slice(None) if every else rows
+        normal, slope = _normal(
+            self.derivatives[:, which], self.weight[which], residuals=self.residuals[which]
+        )
         if self.prior is not None:
             np.einsum("spp->sp", normal)[:] += self.prior.weight
             slope += self.prior.weight * (self.prior.centre[rows] - self.parameters[rows])
@@ -157,15 +163,16 @@ class _State:
         taken = rows[better]
         self.parameters[taken] = tried[better]
         self.residuals[taken] = residuals[better]
-        self.derivatives[taken] = derivatives[better]
+        self.derivatives[:, taken] = derivatives[:, better]
         self.chi2[taken] = chi2[better]
         self.damping[rows] = np.where(
             better,
-            np.maximum(self.damping[rows] * 0.1, _LEAST_DAMPING),
+            np.maximum(self.damping[rows] * 0.01, _LEAST_DAMPING),
             np.maximum(self.damping[rows], 1e-9) * 10.0,
         )
         small = np.abs(move).max(axis=1) < _STEP_TOLERANCE
-        flat = better & (before - chi2 <= _FALL_TOLERANCE * before)
+        # A step that neither falls nor rises is rounding at the bottom.
+        flat = np.abs(before - chi2) <= _FALL_TOLERANCE * before + self.floor[rows]
         stuck = self.damping[rows] > 1e12
         self.moving[rows[small | flat | stuck]] = False
 
@@ -174,25 +181,40 @@ class _State:
     ) -> tuple[FloatArray, FloatArray, FloatArray]:
         values, derivatives = self.shape.evaluate(parameters, self.x[rows])
         residuals = np.where(self.weight[rows] > 0, self.y[rows] - values, 0.0)
-        chi2 = (self.weight[rows] * residuals**2).sum(axis=1)
+        chi2 = np.einsum("sn,sn,sn->s", self.weight[rows], residuals, residuals)
         if self.prior is not None:
             away = parameters - self.prior.centre[rows]
             chi2 += (self.prior.weight * away**2).sum(axis=1)
-        return residuals, derivatives, chi2
+        return residuals, np.moveaxis(derivatives, 2, 0), chi2
 
     def fit(self) -> Fit:
-        normal = np.swapaxes(self.derivatives * self.weight[:, :, None], 1, 2) @ self.derivatives
+        normal, _ = _normal(self.derivatives, self.weight, residuals=self.residuals)
         if self.prior is not None:
             np.einsum("spp->sp", normal)[:] += self.prior.weight
         return Fit(
             parameters=self.parameters,
             inverse_normal=_inverse(normal),
-            derivatives=self.derivatives,
+            derivatives=np.moveaxis(self.derivatives, 0, 2),
             residuals=self.residuals,
             chi2=self.chi2,
             count=(self.weight > 0).sum(axis=1),
             converged=~self.moving,
         )
+
+
+def _normal(
+    derivatives: FloatArray, weight: FloatArray, *, residuals: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    """Return normal matrices and slopes; derivatives have shape (parameters, sweeps, points)."""
+    size, rows = derivatives.shape[:2]
+    normal, slope = np.empty((rows, size, size)), np.empty((rows, size))
+    for one in range(size):
+        weighted = derivatives[one] * weight
+        slope[:, one] = np.einsum("sn,sn->s", weighted, residuals)
+        for other in range(one, size):
+            total = np.einsum("sn,sn->s", weighted, derivatives[other])
+            normal[:, one, other] = normal[:, other, one] = total
+    return normal, slope
 
 
 def _inverse(normal: FloatArray) -> FloatArray:

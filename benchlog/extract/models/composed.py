@@ -56,13 +56,13 @@ class Composed:
         """Return ln gain and its derivatives; see ``Shape``."""
         values, by_upper = self.rolloff.evaluate(self.upper(parameters), ln_frequency)
         ln_gain = parameters[:, :1]
-        derivatives = np.empty((*values.shape, len(self.parameters)))
-        derivatives[:, :, 0] = 1.0
-        derivatives[:, :, self._upper] = by_upper
+        # One parameter after the other in memory: the solver sums over points.
+        by = np.empty((len(self.parameters), *values.shape))
+        by[0] = 1.0
+        by[self._upper] = np.moveaxis(by_upper, 2, 0)
         values = values + ln_gain
         if self.edge is not None:
-            lower, by_pole, by_gain = self.edge.evaluate(parameters[:, -1:], ln_gain, ln_frequency)
+            lower, by[-1], by_gain = self.edge.evaluate(parameters[:, -1:], ln_gain, ln_frequency)
             values = values + lower
-            derivatives[:, :, 0] += by_gain
-            derivatives[:, :, -1] = by_pole
-        return values, derivatives
+            by[0] += by_gain
+        return values, np.moveaxis(by, 0, 2)

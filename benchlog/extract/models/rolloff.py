@@ -7,7 +7,6 @@ logarithms of its own parameters.
 from typing import Protocol
 
 import numpy as np
-from scipy.special import expit
 
 from benchlog.curve import FloatArray
 
@@ -59,8 +58,9 @@ class OnePole:
         self, parameters: FloatArray, ln_frequency: FloatArray
     ) -> tuple[FloatArray, FloatArray]:
         """Return ln magnitude and its derivative by ln fc."""
-        twice = 2.0 * (ln_frequency - parameters[:, :1])
-        return -_HALF * np.logaddexp(0.0, twice), expit(twice)[:, :, None]
+        ratio = _squared(ln_frequency, parameters)
+        above = 1.0 + ratio
+        return -_HALF * np.log(above), (ratio / above)[:, :, None]
 
     def start(self, ln_corner: FloatArray) -> FloatArray:
         """Take the corner."""
@@ -89,9 +89,9 @@ class EqualPoles:
         self, parameters: FloatArray, ln_frequency: FloatArray
     ) -> tuple[FloatArray, FloatArray]:
         """Return ln magnitude and its derivative by the logarithm of the pole."""
-        twice = 2.0 * (ln_frequency - parameters[:, :1])
-        values = -_HALF * self.poles * np.logaddexp(0.0, twice)
-        return values, self.poles * expit(twice)[:, :, None]
+        ratio = _squared(ln_frequency, parameters)
+        above = 1.0 + ratio
+        return -_HALF * self.poles * np.log(above), (self.poles * ratio / above)[:, :, None]
 
     def start(self, ln_corner: FloatArray) -> FloatArray:
         """Put the poles where together they have the corner."""
@@ -114,8 +114,7 @@ class TwoPole:
         self, parameters: FloatArray, ln_frequency: FloatArray
     ) -> tuple[FloatArray, FloatArray]:
         """Return ln magnitude and its derivatives by ln f0 and ln Q."""
-        twice = np.clip(2.0 * (ln_frequency - parameters[:, :1]), -_FARTHEST, _FARTHEST)
-        ratio = np.exp(twice)
+        ratio = _squared(ln_frequency, parameters)
         damping = np.exp(-2.0 * np.clip(parameters[:, 1:2], -50.0, 50.0))
         size = (1.0 - ratio) ** 2 + ratio * damping
         by_f0 = ratio * (damping - 2.0 * (1.0 - ratio)) / size
@@ -133,3 +132,10 @@ class TwoPole:
         square = np.where(inside >= 0, inside + root, 1.0 / (root - np.minimum(inside, 0.0)))
         ln_corner: FloatArray = parameters[:, 0] + _HALF * np.log(square)
         return ln_corner
+
+
+def _squared(ln_frequency: FloatArray, parameters: FloatArray) -> FloatArray:
+    """Return the square of frequency over the first parameter, kept within what exp can hold."""
+    twice = 2.0 * (ln_frequency - parameters[:, :1])
+    ratio: FloatArray = np.exp(np.minimum(twice, _FARTHEST, out=twice), out=twice)
+    return ratio
