@@ -27,6 +27,8 @@ class PointFlag(IntFlag):
     OUT_OF_BAND = 4
     UNSETTLED = 8
     WILD = 16
+    CLIPPED = 32
+    DISTORTED = 64
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

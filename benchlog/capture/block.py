@@ -197,6 +197,9 @@ def _header(above: Sequence[str], delimiter: str, width: int) -> tuple[tuple[str
         cells = [cell.strip() for cell in _cells(line.lstrip(_COMMENT + " "), delimiter)]
         if len(cells) != width or len(rows) == _MOST_HEADER_ROWS:
             break
+        if any(number(cell, ".") is not None for cell in cells):
+            # A line of the preamble that happens to have as many cells.
+            break
         rows.insert(0, tuple(cells))
     return tuple(rows)
 

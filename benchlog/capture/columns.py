@@ -65,7 +65,7 @@ def find_columns(
     columns: dict[Kind, Column] = {}
     house = any(name.lower() == "frequency_hz" for name, _ in named)
     for place, (name, told) in enumerate(named):
-        kind = _kind(name)
+        kind = kind_of(name)
         if kind is None:
             continue
         if kind in columns:
@@ -96,15 +96,15 @@ def _named(
             " --unit frequency=Hz --unit gain=dB",
         )
     names, units = header[-1], [""] * width
-    if len(header) == 2 and any(_kind(_split(cell)[0]) for cell in header[0]):
+    if len(header) == 2 and any(kind_of(split_name(cell)[0]) for cell in header[0]):
         names, units = header[0], list(header[1])
     return [
         (name, unit.strip("()[] ") or inner)
-        for (name, inner), unit in zip(map(_split, names), units, strict=True)
+        for (name, inner), unit in zip(map(split_name, names), units, strict=True)
     ]
 
 
-def _split(cell: str) -> tuple[str, str]:
+def split_name(cell: str) -> tuple[str, str]:
     """Split ``"Gain (dB)"``, ``"f / Hz"`` and ``"gain_db"`` into name and unit."""
     for form in (_IN_BRACKETS, _BEHIND_SLASH):
         found = form.match(cell)
@@ -113,7 +113,8 @@ def _split(cell: str) -> tuple[str, str]:
     return cell.strip(), ""
 
 
-def _kind(name: str) -> Kind | None:
+def kind_of(name: str) -> Kind | None:
+    """Return what a column of this name holds; None where the name says nothing."""
     plain = re.sub(r"[\s.\-]+", "_", name.strip().lower()).strip("_")
     spaced = plain.replace("_", " ")
     for kind, patterns in KINDS.items():

@@ -2,19 +2,24 @@
 
 import hashlib
 import math
-from collections.abc import Mapping
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
 from pathlib import Path
 
+import numpy as np
+
 from benchlog.capture.block import Block, find_block
-from benchlog.capture.columns import Column, find_columns
+from benchlog.capture.channels import is_record
+from benchlog.capture.columns import find_columns
+from benchlog.capture.preamble import read_preamble
 from benchlog.capture.table import swept_curve
 from benchlog.capture.text import decode
+from benchlog.capture.waveform import RecordPoint, point_of, read_records
 from benchlog.circuit.nominal import nominal_figures
 from benchlog.curve import GainCurve
 from benchlog.design.model import Design
 from benchlog.errors import CaptureError
-from benchlog.notation import plain
+from benchlog.notation import plain, si
 
 # A gain that is off by one of these is more likely a slip of probe or unit than a board.
 _SLIPS = (
@@ -25,81 +30,189 @@ _SLIPS = (
 )
 _SLIP_REL = 0.04
 _LARGEST_BYTES = 200_000_000
+_SUFFIXES = (".csv", ".txt", ".tsv", ".dat")
+# Digits in a file end somewhere: no capture is better than this, whatever its residuals say.
+_LEAST_U_REL = 1e-6
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Capture:
-    """A capture and how it was understood.
+    """One board's capture and how it was understood.
 
     Attributes:
         curve: Gain against rising frequency.
-        sha256: Of the file's bytes.
-        encoding: Of the text.
-        block: The table of numbers and what stands around it.
-        columns: Which columns were used, and their units.
+        sha256: Of the file's bytes; of all hashes together where there are several files.
+        files: What was read, in order.
+        understood: What was found, by name, for people and scripts.
         notes: What a person should know.
     """
 
     curve: GainCurve
     sha256: str
-    encoding: str
-    block: Block
-    columns: tuple[Column, ...]
+    files: tuple[Path, ...]
+    understood: Mapping[str, str]
     notes: tuple[str, ...]
 
-    def understood(self) -> dict[str, str]:
-        """Return what was found, by name, for people and scripts."""
-        rows = self.block.rows
-        return {
-            "encoding": self.encoding,
-            "delimiter": self.block.delimiter_name,
-            "decimal": self.block.decimal,
-            "columns": ", ".join(f"{column.name} ({column.unit})" for column in self.columns),
-            "rows": f"{len(rows)}, from line {self.block.first_line}",
-            "first row": ", ".join(plain(value, 6) for value in rows[0]),
-            "last row": ", ".join(plain(value, 6) for value in rows[-1]),
-            "preamble": f"{len(self.block.preamble)} lines",
-        }
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Told:
+    """What a person says about captures where the files are silent.
+
+    Attributes:
+        units: By kind or column name: ``{"gain": "dB"}``.
+        columns: Which column is what: ``{"input": "CH1"}``.
+        frequency_hz: Of time records, where it is known better than they tell.
+    """
+
+    units: Mapping[str, str] = field(default_factory=dict)
+    columns: Mapping[str, str] = field(default_factory=dict)
+    frequency_hz: float | None = None
 
 
 def read_capture(
     path: str | Path, *, design: Design | None = None, units: Mapping[str, str] | None = None
 ) -> GainCurve:
-    """Read a swept table from a CSV file; see ``inspect_capture``."""
-    return inspect_capture(path, design=design, units=units).curve
-
-
-def inspect_capture(
-    path: str | Path, *, design: Design | None = None, units: Mapping[str, str] | None = None
-) -> Capture:
-    """Read a swept table from a CSV file, and keep how it was understood.
+    """Read a capture; see ``inspect_captures``.
 
     Args:
-        path: A table with a frequency column and either gain, gain in dB, or input and output
-            amplitude; phase and uncertainty of gain where it has them.
+        path: A swept table, a time record, or a folder of time records of one board.
         design: Lets notes say where a gain looks like a slip of probe or unit.
         units: Units that the file does not give, by kind: ``{"gain": "dB"}``.
 
     Raises:
         CaptureError: What is wrong, with file, line and column, and what to do.
     """
+    return inspect_captures([path], design=design, told=Told(units=dict(units or {})))[0].curve
+
+
+def inspect_captures(
+    paths: Sequence[str | Path], *, design: Design | None = None, told: Told | None = None
+) -> tuple[Capture, ...]:
+    """Read captures of one board, and keep how they were understood.
+
+    Args:
+        paths: Swept tables (a frequency column and either gain, gain in dB, or input and output
+            amplitude), time records of two channels, or folders of these.
+        design: Lets notes say where a gain looks like a slip of probe or unit.
+        told: What a person says where the files are silent.
+
+    Returns:
+        One capture for each swept table, and one for all time records together.
+
+    Raises:
+        CaptureError: What is wrong, with file, line and column, and what to do.
+    """
+    wanted = told or Told()
+    tables: list[Capture] = []
+    records: list[ReadRecord] = []
+    for path in (file for given in paths for file in _files(Path(given))):
+        found = _read(path, wanted, design)
+        if isinstance(found, Capture):
+            tables.append(found)
+        else:
+            records.append(found)
+    return (*tables, *([_joined(records, design)] if records else []))
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ReadRecord:
+    """One file of time records, fitted."""
+
+    path: Path
+    sha256: str
+    understood: Mapping[str, str]
+    points: tuple[RecordPoint, ...]
+
+
+def _files(path: Path) -> list[Path]:
+    """Return a file, or the files of a folder by name."""
+    if not path.is_dir():
+        return [path]
+    files = sorted(file for file in path.iterdir() if file.suffix.lower() in _SUFFIXES)
+    if not files:
+        raise CaptureError(
+            "the folder holds no captures",
+            where=str(path),
+            expected=f"files that end in {', '.join(_SUFFIXES)}",
+        )
+    return files
+
+
+def _read(path: Path, told: Told, design: Design | None) -> "Capture | ReadRecord":
     data = _bytes(path)
     try:
         text = decode(data)
         block = find_block(text)
-        columns = find_columns(block.header, len(block.rows[0]), asked=dict(units or {}))
+        has_step = read_preamble(block.preamble, block.decimal).step_s is not None
+        understood = _understood(text.encoding, block)
+        sha256 = hashlib.sha256(data).hexdigest()
+        if is_record(block.header, has_step=has_step):
+            records = read_records(block, asked={**told.units, **told.columns})
+            points = tuple(point_of(record, told.frequency_hz) for record in records)
+            return ReadRecord(path=path, sha256=sha256, understood=understood, points=points)
+        columns = find_columns(block.header, len(block.rows[0]), asked=told.units)
         curve, notes = swept_curve(block, columns)
     except CaptureError as error:
         raise error.at(str(path)) from error
-    slip = _slip(curve, design)
+    named = ", ".join(f"{column.name} ({column.unit})" for column in columns)
     return Capture(
         curve=curve,
-        sha256=hashlib.sha256(data).hexdigest(),
-        encoding=text.encoding,
-        block=block,
-        columns=columns,
-        notes=(*block.notes, *notes, *slip),
+        sha256=sha256,
+        files=(path,),
+        understood={**understood, "columns": named},
+        notes=(*block.notes, *notes, *_slip(curve, design)),
     )
+
+
+def _joined(records: Sequence[ReadRecord], design: Design | None) -> Capture:
+    """Make one curve of all records, by rising frequency."""
+    points = sorted(
+        (point for record in records for point in record.points),
+        key=lambda point: point.frequency_hz,
+    )
+    curve = GainCurve(
+        np.array([point.frequency_hz for point in points]),
+        np.array([point.gain for point in points]),
+        np.array([point.phase_deg for point in points]),
+        np.array([max(point.u_gain_rel, _LEAST_U_REL) for point in points]),
+        u_phase_deg=np.array([max(point.u_phase_deg, _LEAST_U_REL) for point in points]),
+        flags=np.array([int(point.flags) for point in points]),
+    )
+    digest = hashlib.sha256("".join(sorted(record.sha256 for record in records)).encode())
+    alone = len(records) == 1
+    return Capture(
+        curve=curve,
+        sha256=records[0].sha256 if alone else digest.hexdigest(),
+        files=tuple(record.path for record in records),
+        understood={**records[0].understood, **_understood_points(points)},
+        notes=(
+            *dict.fromkeys(note for point in points for note in point.notes),
+            *_slip(curve, design),
+        ),
+    )
+
+
+def _understood(encoding: str, block: Block) -> dict[str, str]:
+    rows = block.rows
+    return {
+        "encoding": encoding,
+        "delimiter": block.delimiter_name,
+        "decimal": block.decimal,
+        "rows": f"{len(rows)}, from line {block.first_line}",
+        "first row": ", ".join(plain(value, 6) for value in rows[0]),
+        "last row": ", ".join(plain(value, 6) for value in rows[-1]),
+        "preamble": f"{len(block.preamble)} lines",
+    }
+
+
+def _understood_points(points: Sequence[RecordPoint]) -> dict[str, str]:
+    return {
+        f"record {place}": f"{si(point.frequency_hz, 'Hz', 6)}: input {si(point.input_v, 'Vpk')},"
+        f" output {si(point.output_v, 'Vpk')}, {si(point.samples_per_s, 'Sa/s')},"
+        f" {plain(point.cycles)} cycles, distortion {100 * point.distortion:.2f} %,"
+        f" rest {100 * point.residual:.2f} %"
+        for place, point in enumerate(points, start=1)
+    }
 
 
 def _bytes(path: str | Path) -> bytes:

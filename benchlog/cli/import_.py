@@ -8,6 +8,7 @@ import click
 
 from benchlog.cli.output import print_json
 from benchlog.cli.params import (
+    HERTZ,
     SERIAL,
     design_option,
     json_option,
@@ -31,6 +32,8 @@ from benchlog.errors import CaptureError
 from benchlog.records import Point, PointFlag, SweepStart
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from benchlog.capture.read import Capture
     from benchlog.design.model import Design
     from benchlog.logbook.store import Logbook
@@ -51,6 +54,16 @@ if TYPE_CHECKING:
     metavar="COLUMN=UNIT",
     help="Unit that the file does not give: gain=dB, frequency=kHz, input=Vpp ...",
 )
+@click.option(
+    "--column",
+    "columns",
+    multiple=True,
+    metavar="SIDE=NAME",
+    help="Which channel of a time record is what: input=CH1, output=CH2.",
+)
+@click.option(
+    "--frequency", type=HERTZ, metavar="FREQ", help="Frequency of a time record, if it is known."
+)
 @click.option("--preview", is_flag=True, help="Show what was understood; keep nothing.")
 @click.option("--again", is_flag=True, help="Import a file that is in the logbook already.")
 @json_option
@@ -64,6 +77,8 @@ def command(  # noqa: PLR0913 - one parameter for each option
     serial: str | None,
     logbook_path: str | None,
     units: tuple[str, ...],
+    columns: tuple[str, ...],
+    frequency: float | None,
     preview: bool,
     again: bool,
     as_json: bool,
@@ -71,16 +86,22 @@ def command(  # noqa: PLR0913 - one parameter for each option
 ) -> None:
     """Read CSV captures of one board, draw figures, judge them, and keep it all.
 
-    A capture has a frequency column and gain, gain in dB, or input and output amplitude. Without
-    --design and without a design.toml in the bench folder there are figures but no verdict.
+    A FILE is a swept table (a frequency column and gain, gain in dB, or input and output
+    amplitude), a time record of two channels, or a folder of records at several frequencies; all
+    records together are one curve. Without --design and without a design.toml in the bench folder
+    there are figures but no verdict.
     """
-    from benchlog.capture.read import inspect_capture
+    from benchlog.capture.read import Told, inspect_captures
 
     design = _design(context, design_path)
-    named = dict(_unit(text) for text in units)
-    captures = [inspect_capture(path, design=design, units=named) for path in files]
+    told = Told(
+        units=dict(_named(text, "--unit", "gain=dB") for text in units),
+        columns=dict(_named(text, "--column", "input=CH1") for text in columns),
+        frequency_hz=frequency,
+    )
+    captures = inspect_captures(files, design=design, told=told)
     if preview:
-        _preview(files, captures, design, as_json=as_json)
+        _preview(captures, design, as_json=as_json)
         return
     if serial is None:
         serial = click.prompt("serial", type=SERIAL, err=True) if _asks(as_json=as_json) else ""
@@ -88,22 +109,22 @@ def command(  # noqa: PLR0913 - one parameter for each option
         raise click.UsageError("name the board with --serial: a file name is no serial")
     outcomes = []
     with open_logbook(_logbook(context, logbook_path)) as logbook:
-        for path, capture in zip(files, captures, strict=True):
+        for capture in captures:
             if not again:
-                _refuse_known(logbook, path, capture)
+                _refuse_known(logbook, capture)
             outcomes.append(
                 _kept(
                     logbook,
                     capture,
-                    start=_start(path, capture, design, serial=serial, people=People(**people)),
+                    start=_start(capture, design, serial=serial, people=People(**people)),
                     design=design,
                 )
             )
     if as_json:
         print_json([outcome_json(outcome) for outcome in outcomes])
     else:
-        for path, capture, outcome in zip(files, captures, outcomes, strict=True):
-            _print_notes(path, capture)
+        for capture, outcome in zip(captures, outcomes, strict=True):
+            _print_notes(capture)
             print_outcome(outcome)
     context.exit(exit_code(outcomes))
 
@@ -140,7 +161,7 @@ def _points(capture: "Capture") -> tuple[Point, ...]:
 
 
 def _start(
-    path: Path, capture: "Capture", design: "Design | None", *, serial: str, people: People
+    capture: "Capture", design: "Design | None", *, serial: str, people: People
 ) -> SweepStart:
     return SweepStart(
         uuid=new_uuid(),
@@ -153,7 +174,9 @@ def _start(
         lot=people.lot,
         reason=people.reason,
         note=people.note,
-        settings=json.dumps({"file": path.name, "notes": list(capture.notes)}),
+        settings=json.dumps(
+            {"files": [file.name for file in capture.files], "notes": list(capture.notes)}
+        ),
         capture_sha256=capture.sha256,
         terms=capture.curve.terms,
     )
@@ -178,45 +201,45 @@ def _asks(*, as_json: bool) -> bool:
     return not as_json and sys.stdin is not None and sys.stdin.isatty()
 
 
-def _unit(text: str) -> tuple[str, str]:
-    column, equals, unit = text.partition("=")
-    if not equals or not column.strip() or not unit.strip():
-        raise click.BadParameter(f"{text!r} is not COLUMN=UNIT, like gain=dB", param_hint="--unit")
-    return column.strip(), unit.strip()
+def _named(text: str, option: str, example: str) -> tuple[str, str]:
+    """Split ``gain=dB``."""
+    name, equals, value = text.partition("=")
+    if not equals or not name.strip() or not value.strip():
+        raise click.BadParameter(f"{text!r} is not COLUMN=UNIT, like {example}", param_hint=option)
+    return name.strip(), value.strip()
 
 
-def _refuse_known(logbook: "Logbook", path: Path, capture: "Capture") -> None:
+def _refuse_known(logbook: "Logbook", capture: "Capture") -> None:
     known = logbook.captures(capture.sha256)
     if known:
         raise CaptureError(
-            f"this file is in the logbook already, as serial {known[-1].start.serial}",
-            where=str(path),
-            expected="a file that was not imported before",
+            f"this capture is in the logbook already, as serial {known[-1].start.serial}",
+            where=_title(capture),
+            expected="a capture that was not imported before",
             hint="--again imports it once more",
         )
 
 
-def _print_notes(path: Path, capture: "Capture") -> None:
+def _title(capture: "Capture") -> str:
+    first = str(capture.files[0])
+    return first if len(capture.files) == 1 else f"{first} and {len(capture.files) - 1} more"
+
+
+def _print_notes(capture: "Capture") -> None:
     for note in capture.notes:
-        click.echo(f"{path.name}: {note}")
+        click.echo(f"{_title(capture)}: {note}")
 
 
-def _preview(
-    files: tuple[Path, ...],
-    captures: "list[Capture]",
-    design: "Design | None",
-    *,
-    as_json: bool,
-) -> None:
-    """Show what was understood of each file, and what it would come to."""
+def _preview(captures: "Sequence[Capture]", design: "Design | None", *, as_json: bool) -> None:
+    """Show what was understood of each capture, and what it would come to."""
     from benchlog.judge.verdict import judge
 
     outcomes = []
-    for path, capture in zip(files, captures, strict=True):
+    for capture in captures:
         figures = figures_of(capture.curve, design)
         outcomes.append(
             Outcome(
-                start=_start(path, capture, design, serial="preview", people=People()),
+                start=_start(capture, design, serial="preview", people=People()),
                 design=design,
                 state="complete",
                 why="Preview: nothing was kept.",
@@ -228,15 +251,20 @@ def _preview(
     if as_json:
         print_json(
             [
-                outcome_json(outcome) | {"file": str(path), "understood": capture.understood()}
-                for path, capture, outcome in zip(files, captures, outcomes, strict=True)
+                outcome_json(outcome)
+                | {
+                    "files": [str(file) for file in capture.files],
+                    "understood": dict(capture.understood),
+                    "notes": list(capture.notes),
+                }
+                for capture, outcome in zip(captures, outcomes, strict=True)
             ]
         )
         return
-    for path, capture, outcome in zip(files, captures, outcomes, strict=True):
-        click.echo(str(path))
-        for name, value in capture.understood().items():
+    for capture, outcome in zip(captures, outcomes, strict=True):
+        click.echo(_title(capture))
+        for name, value in capture.understood.items():
             click.echo(f"  {name:<12} {value}")
-        _print_notes(path, capture)
+        _print_notes(capture)
         print_outcome(outcome, terms=True)
     click.echo("preview: nothing was kept")
