@@ -1,7 +1,7 @@
 """Which shape the data support."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
@@ -33,12 +33,26 @@ class Choice:
         chosen: Place in ``tried``, shape (sweeps,).
         runner_up: Place of the next best shape that is still likely; -1 where there is none.
         wild: Points left out, shape (sweeps, points).
+        phase_left_out: Where phase was measured and not fitted, shape (sweeps,); None without it.
     """
 
     tried: tuple[Reduced, ...]
     chosen: npt.NDArray[np.int64]
     runner_up: npt.NDArray[np.int64]
     wild: npt.NDArray[np.bool_]
+    phase_left_out: npt.NDArray[np.bool_] | None = None
+
+    def comparable(self) -> tuple[Reduced, ...]:
+        """Return the fits that were made as the first sweep's own was, with phase or without."""
+        own = self.tried[int(self.chosen[0])].data.phase is None
+        return tuple(one for one in self.tried if (one.data.phase is None) is own)
+
+    def remarks(self) -> npt.NDArray[np.int64]:
+        """Return the bits of what was left out, shape (sweeps,)."""
+        bits = np.where(self.wild.any(axis=1), int(Fault.WILD_POINT), 0)
+        if self.phase_left_out is not None:
+            bits |= np.where(self.phase_left_out, int(Fault.PHASE_DISAGREES), 0)
+        return bits
 
 
 def shape_named(name: str) -> Composed:
@@ -93,12 +107,28 @@ def _all_poor(choice: Choice) -> npt.NDArray[np.bool_]:
 
 
 def _decided(shapes: tuple[Composed, ...], data: Data) -> Choice:
-    fits = [reduce_sweeps(shape, data) for shape in shapes]
-    wild = _wild(fits, data)
+    """Fit, leave wild points out, fit again, and with the phase where it agrees."""
+    by_magnitude = replace(data, phase=None)
+    fits = [reduce_sweeps(shape, by_magnitude) for shape in shapes]
+    wild = _wild(fits, by_magnitude)
     if wild.any():
-        fits = [reduce_sweeps(shape, data.without(wild)) for shape in shapes]
+        fits = [reduce_sweeps(shape, by_magnitude.without(wild)) for shape in shapes]
     chosen, runner_up = _best(fits)
-    return Choice(tried=tuple(fits), chosen=chosen, runner_up=runner_up, wild=wild)
+    if data.phase is None:
+        return Choice(tried=tuple(fits), chosen=chosen, runner_up=runner_up, wild=wild)
+    with_phase = [reduce_sweeps(shape, data.without(wild)) for shape in shapes]
+    first, second = _best(with_phase)
+    columns = np.arange(len(first))
+    faults = np.stack([fit.faults for fit in with_phase])[first, columns]
+    alone = (faults & int(Fault.PHASE_DISAGREES)) != 0
+    aside = len(shapes)
+    return Choice(
+        tried=(*with_phase, *fits),
+        chosen=np.where(alone, chosen + aside, first),
+        runner_up=np.where(alone, np.where(runner_up < 0, -1, runner_up + aside), second),
+        wild=wild,
+        phase_left_out=alone,
+    )
 
 
 def _wild(fits: Sequence[Reduced], data: Data) -> npt.NDArray[np.bool_]:

@@ -63,6 +63,8 @@ def extract(curve: GainCurve, design: Design | None = None, *, shape: str = "aut
         curve.gain[None, :],
         u_gain_rel=None if curve.u_gain_rel is None else curve.u_gain_rel[None, :],
         usable=curve.usable[None, :],
+        phase_deg=None if curve.phase_deg is None else curve.phase_deg[None, :],
+        u_phase_deg=None if curve.u_phase_deg is None else curve.u_phase_deg[None, :],
     )
     choice = choose(data, design, shape=shape)
     left_out = tuple(int(place) for place in np.flatnonzero(~curve.usable | choice.wild[0]))
@@ -140,7 +142,7 @@ class _Drawing:
         """
         through = self._through()
         faults = self.faults | through.faults
-        faults |= int(Fault.WILD_POINT) if choice.wild.any() else 0
+        faults |= int(choice.remarks()[0])
         reasons = reasons_of(
             faults, replace(seen_of(self.curve, choice, self.reduced), hidden_by=through.hidden_by)
         )

@@ -47,7 +47,7 @@ def extract_many(
         frequency_hz: Hertz, shape (points,) for all sweeps or (sweeps, points).
         gain: V/V, shape (sweeps, points); NaN pads sweeps of unequal length.
         design: What the boards are built to.
-        phase_deg: Not used by the shapes there are.
+        phase_deg: Degrees, fitted together with gain; shape that broadcasts to gain's.
         u_gain_rel: Relative standard uncertainty of each gain, shape that broadcasts to gain's.
         shape: ``"auto"``, or a name that ``choose.shape_named`` knows.
 
@@ -60,7 +60,6 @@ def extract_many(
         CurveError: Shapes do not fit together.
         Misuse: There is no such shape.
     """
-    del phase_deg
     if shape != "auto":
         shape_named(shape)
     gains = np.asarray(gain, dtype=float)
@@ -70,20 +69,34 @@ def extract_many(
         )
     frequencies = _beside(frequency_hz, gains, "frequency_hz")
     noise = None if u_gain_rel is None else _beside(u_gain_rel, gains, "u_gain_rel")
+    phases = None if phase_deg is None else _beside(phase_deg, gains, "phase_deg")
     chunks = []
     for at in range(0, max(len(gains), 1), _CHUNK):
         rows = slice(at, at + _CHUNK)
-        data = _data(frequencies[rows], gains[rows], None if noise is None else noise[rows])
+        data = _data(
+            frequencies[rows],
+            gains[rows],
+            u_gain_rel=None if noise is None else noise[rows],
+            phase_deg=None if phases is None else phases[rows],
+        )
         chunks.append(_chunk(data, design, shape))
     return {name: np.concatenate([chunk[name] for chunk in chunks]) for name in chunks[0]}
 
 
-def _data(frequency_hz: FloatArray, gain: FloatArray, u_gain_rel: FloatArray | None) -> Data:
+def _data(
+    frequency_hz: FloatArray,
+    gain: FloatArray,
+    *,
+    u_gain_rel: FloatArray | None,
+    phase_deg: FloatArray | None,
+) -> Data:
     with np.errstate(invalid="ignore"):
         usable = np.isfinite(gain) & (gain > 0) & (frequency_hz > 0)
         if u_gain_rel is not None:
             usable &= np.isfinite(u_gain_rel) & (u_gain_rel > 0)
-    return prepare(frequency_hz, gain, u_gain_rel=u_gain_rel, usable=usable)
+        if phase_deg is not None:
+            usable &= np.isfinite(phase_deg)
+    return prepare(frequency_hz, gain, u_gain_rel=u_gain_rel, usable=usable, phase_deg=phase_deg)
 
 
 def _chunk(data: Data, design: Design | None, shape: str) -> dict[str, npt.NDArray[Any]]:
@@ -100,7 +113,7 @@ def _chunk(data: Data, design: Design | None, shape: str) -> dict[str, npt.NDArr
         "validity": _taken(by_shape, choice.chosen, "validity").astype(np.int64),
         "shape": np.array([one.shape.name for one in choice.tried])[choice.chosen],
     }
-    answer["validity"] |= np.where(choice.wild.any(axis=1), int(Fault.WILD_POINT), 0)
+    answer["validity"] |= choice.remarks()
     for name in FIGURES:
         value = _taken(by_shape, choice.chosen, name) if rows else np.empty(0)
         u = _taken(by_shape, choice.chosen, f"u_{name}")
@@ -125,6 +138,7 @@ def _gbw_one_by_one(
             GainCurve(
                 np.exp(data.ln_frequency[row][counts]),
                 np.exp(data.ln_gain[row][counts]),
+                None if data.phase is None else np.degrees(data.phase.radians[row][counts]),
                 u_gain_rel=weight[counts] ** -0.5 if data.stated else None,
             ),
             design,

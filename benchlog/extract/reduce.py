@@ -1,6 +1,6 @@
 """From arrays of sweeps to fitted parameters and what they can carry; shared by one and many."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 import numpy.typing as npt
@@ -10,9 +10,10 @@ from benchlog.design.model import Design
 from benchlog.extract.implied import DesignGbw, Implied
 from benchlog.extract.landmarks import Landmark, crossover, lower_corner, upper_corner
 from benchlog.extract.models.composed import Composed
+from benchlog.extract.phase import Phase, solve_with_phase
 from benchlog.extract.robust import most_wild_points, worst_point
 from benchlog.extract.solve import Fit, solve
-from benchlog.extract.validity import FEWEST_POINTS, Fault, faults_of
+from benchlog.extract.validity import FEWEST_POINTS, Fault, faults_of, phase_disagrees
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -23,22 +24,18 @@ class Data:
         ln_frequency, ln_gain: Zero where a point does not count.
         weight: Inverse variance of ln gain where ``stated``, else 1; 0 where it does not count.
         stated: Whether the noise is stated.
+        phase: Of the same points, where it was measured and is to be fitted.
     """
 
     ln_frequency: FloatArray
     ln_gain: FloatArray
     weight: FloatArray
     stated: bool
+    phase: Phase | None = None
 
     def without(self, wild: npt.NDArray[np.bool_]) -> "Data":
         """Return the same sweeps without some points."""
-        weight = np.where(wild, 0.0, self.weight)
-        return Data(
-            ln_frequency=self.ln_frequency,
-            ln_gain=self.ln_gain,
-            weight=weight,
-            stated=self.stated,
-        )
+        return replace(self, weight=np.where(wild, 0.0, self.weight))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -98,6 +95,8 @@ def prepare(
     *,
     u_gain_rel: FloatArray | None,
     usable: npt.NDArray[np.bool_],
+    phase_deg: FloatArray | None = None,
+    u_phase_deg: FloatArray | None = None,
 ) -> Data:
     """Take logarithms; every argument has shape (sweeps, points), and unusable points may be NaN.
 
@@ -106,19 +105,38 @@ def prepare(
         gain: V/V.
         u_gain_rel: Stated noise; None takes it from the residuals.
         usable: Which points count.
+        phase_deg: Degrees, where it was measured.
+        u_phase_deg: Of it; ``u_gain_rel`` in radians by default.
     """
+    phase = None
+    if phase_deg is not None:
+        u_phase = u_gain_rel if u_phase_deg is None else np.radians(u_phase_deg)
+        phase = Phase(
+            radians=np.where(usable, np.radians(phase_deg), 0.0),
+            weight=None if u_phase is None or u_gain_rel is None else u_phase**-2.0,
+        )
     with np.errstate(invalid="ignore", divide="ignore"):
         return Data(
             ln_frequency=np.where(usable, np.log(frequency_hz), 0.0),
             ln_gain=np.where(usable, np.log(gain), 0.0),
             weight=np.where(usable, 1.0 if u_gain_rel is None else u_gain_rel**-2.0, 0.0),
             stated=u_gain_rel is not None,
+            phase=phase,
         )
 
 
 def reduce_sweeps(shape: Composed, data: Data) -> Reduced:
     """Fit one shape to many sweeps."""
-    fit = solve(shape, data.ln_frequency, data.ln_gain, weight=data.weight)
+    disagrees = np.zeros(len(data.weight), np.bool_)
+    if data.phase is None:
+        fit = solve(shape, data.ln_frequency, data.ln_gain, weight=data.weight)
+    else:
+        fit, phase_residuals = solve_with_phase(
+            shape, data.ln_frequency, data.ln_gain, weight=data.weight, phase=data.phase
+        )
+        disagrees = phase_disagrees(
+            phase_residuals, data.ln_frequency, data.weight, stated=data.stated
+        )
     dof = np.maximum(fit.count - len(shape.parameters), 1)
     upper = upper_corner(shape, fit.parameters)
     lower = lower_corner(shape, fit.parameters)
@@ -136,7 +154,8 @@ def reduce_sweeps(shape: Composed, data: Data) -> Reduced:
             stated=data.stated,
             ln_upper=upper.ln_value,
             ln_lower=None if lower is None else lower.ln_value,
-        ),
+        )
+        | np.where(disagrees, int(Fault.PHASE_DISAGREES), 0),
     )
 
 

@@ -66,6 +66,11 @@ _SENTENCES: dict[Fault, tuple[str, str]] = {
         "no band",
         "The edges are so close together that there is no plateau and there are no corners.",
     ),
+    Fault.PHASE_DISAGREES: (
+        "phase disagrees with magnitude",
+        "No delay makes the phase that of a board with this magnitude, so the phase was left out:"
+        " look at the probes, the channels and the meter's settling.",
+    ),
     Fault.GBW_NEEDS_DESIGN: (
         "GBW needs a design",
         "Without a design a response of the shape {shape} has no gain-bandwidth product.",

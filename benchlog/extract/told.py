@@ -30,13 +30,13 @@ def seen_of(curve: GainCurve, choice: Choice, reduced: Reduced) -> Seen:
 
 def tried(choice: Choice) -> tuple[tuple[str, float], ...]:
     """Return name and AICc of every shape that was fitted to the first sweep, best first."""
-    pairs = [(one.shape.name, float(one.aicc[0])) for one in choice.tried]
+    pairs = [(one.shape.name, float(one.aicc[0])) for one in choice.comparable()]
     return tuple(sorted((pair for pair in pairs if np.isfinite(pair[1])), key=lambda pair: pair[1]))
 
 
 def why(choice: Choice) -> str:
     """Return one sentence: why the first sweep got its shape."""
-    if len(choice.tried) == 1:
+    if len(choice.comparable()) == 1:
         return "It is the only shape that was asked for."
     ranked = tried(choice)
     name = choice.tried[int(choice.chosen[0])].shape.name

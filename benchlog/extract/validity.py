@@ -54,6 +54,7 @@ class Fault(enum.IntFlag):
     NARROW_BAND = 2048
     NO_BAND = 4096
     GBW_NEEDS_DESIGN = 8192
+    PHASE_DISAGREES = 16384
 
 
 FIGURES_TAKEN: dict[Fault, tuple[str, ...]] = {
@@ -71,6 +72,7 @@ FIGURES_TAKEN: dict[Fault, tuple[str, ...]] = {
     Fault.NARROW_BAND: (),
     Fault.NO_BAND: _ALL,
     Fault.GBW_NEEDS_DESIGN: ("gbw_hz",),
+    Fault.PHASE_DISAGREES: (),
 }
 
 
@@ -148,7 +150,37 @@ def _poor(
     steps = np.where(counts[:, 1:], np.diff(in_order, axis=1), 0.0)
     size = (fit.residuals**2).sum(axis=1)
     ratio = (steps**2).sum(axis=1) / np.maximum(size, 1e-300)
-    sigma = 2.0 / np.sqrt(np.maximum(fit.count, 1))
+    sigma = 2.0 / np.sqrt(np.maximum((weight > 0).sum(axis=1), 1))
     meaningful = np.sqrt(size / dof) > _MEANINGLESS_REL
+    patterned: npt.NDArray[np.bool_] = (ratio < 2.0 - _POOR_SIGMAS * sigma) & meaningful
+    return patterned
+
+
+def phase_disagrees(
+    residuals: FloatArray, ln_frequency: FloatArray, weight: FloatArray, *, stated: bool
+) -> npt.NDArray[np.bool_]:
+    """Tell phases that magnitude and a delay do not explain, shape (sweeps,).
+
+    Args:
+        residuals: Of phase, over its noise where that is stated, shape (sweeps, points).
+        ln_frequency: Same shape.
+        weight: Of the points, same shape.
+        stated: Whether the noise is stated.
+    """
+    counts = weight > 0
+    count = counts.sum(axis=1)
+    size = np.where(counts, residuals**2, 0.0).sum(axis=1)
+    if stated:
+        improbable: npt.NDArray[np.bool_] = chdtrc(np.maximum(count - 1, 1), size) < (
+            _POOR_PROBABILITY
+        )
+        return improbable
+    order = np.argsort(np.where(counts, ln_frequency, np.inf), axis=1)
+    in_order = np.take_along_axis(np.where(counts, residuals, 0.0), order, axis=1)
+    together = np.take_along_axis(counts, order, axis=1)[:, 1:]
+    steps = (np.where(together, np.diff(in_order, axis=1), 0.0) ** 2).sum(axis=1)
+    ratio = steps / np.maximum(size, 1e-300)
+    meaningful = np.sqrt(size / np.maximum(count, 1)) > _MEANINGLESS_REL
+    sigma = 2.0 / np.sqrt(np.maximum(count, 1))
     patterned: npt.NDArray[np.bool_] = (ratio < 2.0 - _POOR_SIGMAS * sigma) & meaningful
     return patterned

@@ -66,3 +66,16 @@ class Composed:
             values = values + lower
             by[0] += by_gain
         return values, np.moveaxis(by, 0, 2)
+
+    def phase(
+        self, parameters: FloatArray, ln_frequency: FloatArray
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return the phase in radians and its derivatives, shapes as ``evaluate``."""
+        values, by_upper = self.rolloff.phase(self.upper(parameters), ln_frequency)
+        by = np.zeros((len(self.parameters), *values.shape))
+        by[self._upper] = np.moveaxis(by_upper, 2, 0)
+        if self.edge is not None:
+            ln_gain = parameters[:, :1]
+            lower, by[-1], by[0] = self.edge.phase(parameters[:, -1:], ln_gain, ln_frequency)
+            values = values + lower
+        return values, np.moveaxis(by, 0, 2)

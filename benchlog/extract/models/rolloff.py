@@ -38,6 +38,12 @@ class Rolloff(Protocol):
         """Return ln magnitude (sweeps, points) and derivatives (sweeps, points, parameters)."""
         ...
 
+    def phase(
+        self, parameters: FloatArray, ln_frequency: FloatArray
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return the phase in radians and its derivatives, shapes as ``evaluate``."""
+        ...
+
     def start(self, ln_corner: FloatArray) -> FloatArray:
         """Guess the parameters from a half-power corner, shape (sweeps,)."""
         ...
@@ -61,6 +67,13 @@ class OnePole:
         ratio = _squared(ln_frequency, parameters)
         above = 1.0 + ratio
         return -_HALF * np.log(above), (ratio / above)[:, :, None]
+
+    def phase(
+        self, parameters: FloatArray, ln_frequency: FloatArray
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return the phase and its derivative by ln fc."""
+        x = np.sqrt(_squared(ln_frequency, parameters))
+        return -np.arctan(x), (x / (1.0 + x**2))[:, :, None]
 
     def start(self, ln_corner: FloatArray) -> FloatArray:
         """Take the corner."""
@@ -93,6 +106,13 @@ class EqualPoles:
         above = 1.0 + ratio
         return -_HALF * self.poles * np.log(above), (self.poles * ratio / above)[:, :, None]
 
+    def phase(
+        self, parameters: FloatArray, ln_frequency: FloatArray
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return the phase and its derivative by the logarithm of the pole."""
+        x = np.sqrt(_squared(ln_frequency, parameters))
+        return -self.poles * np.arctan(x), (self.poles * x / (1.0 + x**2))[:, :, None]
+
     def start(self, ln_corner: FloatArray) -> FloatArray:
         """Put the poles where together they have the corner."""
         return (ln_corner - self._ln_shrinkage)[:, None]
@@ -119,6 +139,17 @@ class TwoPole:
         size = (1.0 - ratio) ** 2 + ratio * damping
         by_f0 = ratio * (damping - 2.0 * (1.0 - ratio)) / size
         return -_HALF * np.log(size), np.stack([by_f0, ratio * damping / size], axis=2)
+
+    def phase(
+        self, parameters: FloatArray, ln_frequency: FloatArray
+    ) -> tuple[FloatArray, FloatArray]:
+        """Return the phase and its derivatives by ln f0 and ln Q."""
+        ratio = _squared(ln_frequency, parameters)
+        damped = np.sqrt(ratio) * np.exp(-np.clip(parameters[:, 1:2], -50.0, 50.0))
+        below = 1.0 - ratio
+        size = below**2 + damped**2
+        by = np.stack([damped * (1.0 + ratio) / size, below * damped / size], axis=2)
+        return -np.arctan2(damped, below), by
 
     def start(self, ln_corner: FloatArray) -> FloatArray:
         """Begin maximally flat."""
