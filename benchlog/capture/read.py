@@ -105,7 +105,7 @@ def inspect_captures(
     wanted = told or Told()
     tables: list[Capture] = []
     records: list[ReadRecord] = []
-    for path in (file for given in paths for file in _files(Path(given))):
+    for path in (file for given in paths for file in capture_files(Path(given))):
         found = _read(path, wanted, design)
         if isinstance(found, Capture):
             tables.append(found)
@@ -124,8 +124,12 @@ class ReadRecord:
     points: tuple[RecordPoint, ...]
 
 
-def _files(path: Path) -> list[Path]:
-    """Return a file, or the files of a folder by name."""
+def capture_files(path: Path) -> list[Path]:
+    """Return a file, or the files of a folder by name.
+
+    Raises:
+        CaptureError: The folder holds none.
+    """
     if not path.is_dir():
         return [path]
     files = sorted(file for file in path.iterdir() if file.suffix.lower() in _SUFFIXES)

@@ -1,6 +1,6 @@
 """``benchlog import``: captures become sweeps of the logbook."""
 
-import json
+import sys
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -11,32 +11,18 @@ from benchlog.cli.params import (
     HERTZ,
     SERIAL,
     design_option,
+    folder_of,
     json_option,
     logbook_option,
     people_options,
 )
 from benchlog.cli.place import DESIGN, logbook_path, read_folder_design
-from benchlog.cli.show import outcome_json, print_outcome
-from benchlog.cli.street import (
-    Outcome,
-    People,
-    begin,
-    exit_code,
-    figures_of,
-    new_uuid,
-    now,
-    open_logbook,
-    settle,
-)
-from benchlog.errors import CaptureError
-from benchlog.records import Point, PointFlag, SweepStart
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
-
-    from benchlog.capture.read import Capture
+    from benchlog.capture.read import Told
+    from benchlog.cli.importing import Import
+    from benchlog.cli.street import People
     from benchlog.design.model import Design
-    from benchlog.logbook.store import Logbook
 
 
 @click.command(name="import", short_help="Bring CSV captures into the logbook and judge them.")
@@ -45,6 +31,12 @@ if TYPE_CHECKING:
 )
 @design_option
 @click.option("--serial", type=SERIAL, help="The board's serial; asked for on a terminal.")
+@click.option(
+    "--serial-from-name",
+    "pattern",
+    metavar="PATTERN",
+    help="Take serials from file names: '*_{serial}.csv'.",
+)
 @logbook_option
 @people_options
 @click.option(
@@ -52,7 +44,7 @@ if TYPE_CHECKING:
     "units",
     multiple=True,
     metavar="COLUMN=UNIT",
-    help="Unit that the file does not give: gain=dB, frequency=kHz, input=Vpp ...",
+    help="Unit that the file does not give: gain=dB, frequency=kHz, input=Vpp, time=us ...",
 )
 @click.option(
     "--column",
@@ -64,8 +56,12 @@ if TYPE_CHECKING:
 @click.option(
     "--frequency", type=HERTZ, metavar="FREQ", help="Frequency of a time record, if it is known."
 )
+@click.option("--layout", metavar="NAME", help="Units and columns as saved by --save-layout.")
+@click.option("--save-layout", metavar="NAME", help="Keep --unit and --column under a name.")
 @click.option("--preview", is_flag=True, help="Show what was understood; keep nothing.")
-@click.option("--again", is_flag=True, help="Import a file that is in the logbook already.")
+@click.option("--yes", is_flag=True, help="Do not ask on a terminal whether to keep it.")
+@click.option("--again", is_flag=True, help="Import a capture that is in the logbook already.")
+@click.option("--no-original", is_flag=True, help="Keep no compressed copy of the files.")
 @json_option
 @click.pass_context
 def command(  # noqa: PLR0913 - one parameter for each option
@@ -75,12 +71,17 @@ def command(  # noqa: PLR0913 - one parameter for each option
     *,
     design_path: str | None,
     serial: str | None,
+    pattern: str | None,
     logbook_path: str | None,
     units: tuple[str, ...],
     columns: tuple[str, ...],
     frequency: float | None,
+    layout: str | None,
+    save_layout: str | None,
     preview: bool,
+    yes: bool,
     again: bool,
+    no_original: bool,
     as_json: bool,
     **people: str,
 ) -> None:
@@ -91,180 +92,146 @@ def command(  # noqa: PLR0913 - one parameter for each option
     records together are one curve. Without --design and without a design.toml in the bench folder
     there are figures but no verdict.
     """
-    from benchlog.capture.read import Told, inspect_captures
+    from benchlog.cli.importing import preview_json, print_preview
+    from benchlog.cli.street import People
 
-    design = _design(context, design_path)
-    told = Told(
-        units=dict(_named(text, "--unit", "gain=dB") for text in units),
-        columns=dict(_named(text, "--column", "input=CH1") for text in columns),
-        frequency_hz=frequency,
-    )
-    captures = inspect_captures(files, design=design, told=told)
-    if preview:
-        _preview(captures, design, as_json=as_json)
-        return
-    if serial is None:
-        serial = click.prompt("serial", type=SERIAL, err=True) if _asks(as_json=as_json) else ""
-    if not serial:
-        raise click.UsageError("name the board with --serial: a file name is no serial")
-    outcomes = []
-    with open_logbook(_logbook(context, logbook_path)) as logbook:
-        for capture in captures:
-            if not again:
-                _refuse_known(logbook, capture)
-            outcomes.append(
-                _kept(
-                    logbook,
-                    capture,
-                    start=_start(capture, design, serial=serial, people=People(**people)),
-                    design=design,
-                )
-            )
-    if as_json:
-        print_json([outcome_json(outcome) for outcome in outcomes])
-    else:
-        for capture, outcome in zip(captures, outcomes, strict=True):
-            _print_notes(capture)
-            print_outcome(outcome)
-    context.exit(exit_code(outcomes))
-
-
-def _kept(
-    logbook: "Logbook", capture: "Capture", *, start: SweepStart, design: "Design | None"
-) -> Outcome:
-    """Keep a capture whole or not at all, then draw figures and judge."""
-    points = _points(capture)
-    with logbook.together():
-        begin(logbook, start, design)
-        logbook.add_points(start.uuid, points)
-        logbook.end_sweep(start.uuid, "complete", "Imported.")
-    outcome = Outcome(start=start, design=design, state="complete", why="Imported.", points=points)
-    return settle(logbook, outcome)
-
-
-def _points(capture: "Capture") -> tuple[Point, ...]:
-    curve = capture.curve
-    return tuple(
-        Point(
-            position=place,
-            frequency_hz=float(curve.frequency_hz[place]),
-            level_vrms=0.0,
-            input_vrms=None,
-            output_vrms=None,
-            gain=float(curve.gain[place]),
-            u_gain_rel=None if curve.u_gain_rel is None else float(curve.u_gain_rel[place]),
-            phase_deg=None if curve.phase_deg is None else float(curve.phase_deg[place]),
-            flags=PointFlag.NONE if curve.flags is None else PointFlag(int(curve.flags[place])),
-        )
-        for place in range(len(curve))
-    )
-
-
-def _start(
-    capture: "Capture", design: "Design | None", *, serial: str, people: People
-) -> SweepStart:
-    return SweepStart(
-        uuid=new_uuid(),
+    if serial is not None and pattern is not None:
+        raise click.UsageError("--serial and --serial-from-name exclude each other")
+    told = _told(context, units=units, columns=columns, frequency_hz=frequency, layout=layout)
+    imports = _read(
+        files,
+        _design(context, design_path),
+        told,
         serial=serial,
-        kind="capture",
-        started_at=now(),
-        design_sha256=None if design is None else design.sha256,
-        reference=capture.curve.reference,
-        operator=people.operator,
-        lot=people.lot,
-        reason=people.reason,
-        note=people.note,
-        settings=json.dumps(
-            {"files": [file.name for file in capture.files], "notes": list(capture.notes)}
-        ),
-        capture_sha256=capture.sha256,
-        terms=capture.curve.terms,
+        pattern=pattern,
+        people=People(**people),
     )
+    if save_layout is not None:
+        _save_layout(context, save_layout, told)
+    asks = not as_json and sys.stdin is not None and sys.stdin.isatty()
+    if preview and as_json:
+        print_json(preview_json(imports))
+    elif preview or (asks and not yes):
+        print_preview(imports)
+    if preview:
+        click.echo("preview: nothing was kept", err=as_json)
+        return
+    imports = _named_boards(imports, asks=asks)
+    if asks and not yes and not click.confirm("keep it?", err=True):
+        raise click.Abort
+    context.exit(
+        _keep(
+            context,
+            imports,
+            logbook=logbook_path,
+            again=again,
+            originals=not no_original,
+            as_json=as_json,
+        )
+    )
+
+
+def _read(
+    files: tuple[Path, ...],
+    design: "Design | None",
+    told: "Told",
+    *,
+    serial: str | None,
+    pattern: str | None,
+    people: "People",
+) -> "list[Import]":
+    """Read the captures of each board."""
+    from benchlog.capture.naming import by_serial
+    from benchlog.capture.read import capture_files, inspect_captures
+    from benchlog.cli.importing import Import
+
+    groups = {serial or "": list(files)}
+    if pattern is not None:
+        groups = by_serial([file for given in files for file in capture_files(given)], pattern)
+    return [
+        Import(serial=name, capture=capture, design=design, people=people)
+        for name, group in groups.items()
+        for capture in inspect_captures(group, design=design, told=told)
+    ]
+
+
+def _named_boards(imports: "list[Import]", *, asks: bool) -> "list[Import]":
+    """Ask for the serial where none was given; a file name is only a suggestion."""
+    from dataclasses import replace
+
+    if all(one.serial for one in imports):
+        return imports
+    if not asks:
+        raise click.UsageError("name the board with --serial: a file name is no serial")
+    suggested = imports[0].capture.files[0].stem
+    serial = click.prompt(f"serial (the file is called {suggested})", type=SERIAL, err=True)
+    return [replace(one, serial=one.serial or serial) for one in imports]
+
+
+def _keep(
+    context: click.Context,
+    imports: "list[Import]",
+    *,
+    logbook: str | None,
+    again: bool,
+    originals: bool,
+    as_json: bool,
+) -> int:
+    """Keep the captures, print what became of them, and return the exit code."""
+    from benchlog.cli.importing import ORIGINALS, print_notes
+    from benchlog.cli.show import print_outcomes
+    from benchlog.cli.street import exit_code, open_logbook
+
+    path = logbook_path(context, logbook)
+    with open_logbook(path) as opened:
+        for one in () if again else imports:
+            one.refuse_known(opened)
+        folder = path.parent / ORIGINALS if originals else None
+        outcomes = [one.keep(opened, originals=folder) for one in imports]
+    for one in () if as_json else imports:
+        print_notes(one)
+    print_outcomes(outcomes, as_json=as_json)
+    return exit_code(outcomes)
 
 
 def _design(context: click.Context, path: str | None) -> "Design | None":
-    from benchlog.cli.params import folder_of
-
     if path is None and not (folder_of(context) / DESIGN).exists():
         return None
     return read_folder_design(context, path)
 
 
-def _logbook(context: click.Context, named: str | None) -> Path:
-    return logbook_path(context, named)
+def _told(
+    context: click.Context,
+    *,
+    units: tuple[str, ...],
+    columns: tuple[str, ...],
+    frequency_hz: float | None,
+    layout: str | None,
+) -> "Told":
+    """Return what a person said about the files, on the line and in a saved layout."""
+    from benchlog.capture.layout import read_layout
+    from benchlog.capture.read import Told
+
+    saved = Told() if layout is None else read_layout(folder_of(context), layout)
+    return Told(
+        units={**saved.units, **dict(_pair(text, "--unit", "gain=dB") for text in units)},
+        columns={
+            **saved.columns,
+            **dict(_pair(text, "--column", "input=CH1") for text in columns),
+        },
+        frequency_hz=frequency_hz,
+    )
 
 
-def _asks(*, as_json: bool) -> bool:
-    """Tell whether a person can be asked."""
-    import sys
+def _save_layout(context: click.Context, name: str, told: "Told") -> None:
+    from benchlog.capture.layout import save_layout
 
-    return not as_json and sys.stdin is not None and sys.stdin.isatty()
+    click.echo(f"layout kept in {save_layout(folder_of(context), name, told)}", err=True)
 
 
-def _named(text: str, option: str, example: str) -> tuple[str, str]:
+def _pair(text: str, option: str, example: str) -> tuple[str, str]:
     """Split ``gain=dB``."""
     name, equals, value = text.partition("=")
     if not equals or not name.strip() or not value.strip():
         raise click.BadParameter(f"{text!r} is not COLUMN=UNIT, like {example}", param_hint=option)
     return name.strip(), value.strip()
-
-
-def _refuse_known(logbook: "Logbook", capture: "Capture") -> None:
-    known = logbook.captures(capture.sha256)
-    if known:
-        raise CaptureError(
-            f"this capture is in the logbook already, as serial {known[-1].start.serial}",
-            where=_title(capture),
-            expected="a capture that was not imported before",
-            hint="--again imports it once more",
-        )
-
-
-def _title(capture: "Capture") -> str:
-    first = str(capture.files[0])
-    return first if len(capture.files) == 1 else f"{first} and {len(capture.files) - 1} more"
-
-
-def _print_notes(capture: "Capture") -> None:
-    for note in capture.notes:
-        click.echo(f"{_title(capture)}: {note}")
-
-
-def _preview(captures: "Sequence[Capture]", design: "Design | None", *, as_json: bool) -> None:
-    """Show what was understood of each capture, and what it would come to."""
-    from benchlog.judge.verdict import judge
-
-    outcomes = []
-    for capture in captures:
-        figures = figures_of(capture.curve, design)
-        outcomes.append(
-            Outcome(
-                start=_start(capture, design, serial="preview", people=People()),
-                design=design,
-                state="complete",
-                why="Preview: nothing was kept.",
-                points=_points(capture),
-                figures=figures,
-                verdict=None if design is None else judge(figures, design.budget),
-            )
-        )
-    if as_json:
-        print_json(
-            [
-                outcome_json(outcome)
-                | {
-                    "files": [str(file) for file in capture.files],
-                    "understood": dict(capture.understood),
-                    "notes": list(capture.notes),
-                }
-                for capture, outcome in zip(captures, outcomes, strict=True)
-            ]
-        )
-        return
-    for capture, outcome in zip(captures, outcomes, strict=True):
-        click.echo(_title(capture))
-        for name, value in capture.understood.items():
-            click.echo(f"  {name:<12} {value}")
-        _print_notes(capture)
-        print_outcome(outcome, terms=True)
-    click.echo("preview: nothing was kept")
