@@ -33,6 +33,7 @@ class Choice:
         chosen: Place in ``tried``, shape (sweeps,).
         runner_up: Place of the next best shape that is still likely; -1 where there is none.
         wild: Points left out, shape (sweeps, points).
+        weight: Of all points, those left out included, same shape.
         phase_left_out: Where phase was measured and not fitted, shape (sweeps,); None without it.
     """
 
@@ -40,6 +41,7 @@ class Choice:
     chosen: npt.NDArray[np.int64]
     runner_up: npt.NDArray[np.int64]
     wild: npt.NDArray[np.bool_]
+    weight: npt.NDArray[np.float64]
     phase_left_out: npt.NDArray[np.bool_] | None = None
 
     def comparable(self) -> tuple[Reduced, ...]:
@@ -115,7 +117,9 @@ def _decided(shapes: tuple[Composed, ...], data: Data) -> Choice:
         fits = [reduce_sweeps(shape, by_magnitude.without(wild)) for shape in shapes]
     chosen, runner_up = _best(fits)
     if data.phase is None:
-        return Choice(tried=tuple(fits), chosen=chosen, runner_up=runner_up, wild=wild)
+        return Choice(
+            tried=tuple(fits), chosen=chosen, runner_up=runner_up, wild=wild, weight=data.weight
+        )
     with_phase = [reduce_sweeps(shape, data.without(wild)) for shape in shapes]
     first, second = _best(with_phase)
     columns = np.arange(len(first))
@@ -127,6 +131,7 @@ def _decided(shapes: tuple[Composed, ...], data: Data) -> Choice:
         chosen=np.where(alone, chosen + aside, first),
         runner_up=np.where(alone, np.where(runner_up < 0, -1, runner_up + aside), second),
         wild=wild,
+        weight=data.weight,
         phase_left_out=alone,
     )
 

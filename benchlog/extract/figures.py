@@ -8,7 +8,10 @@ import numpy as np
 
 from benchlog.curve import GainCurve
 from benchlog.design.model import Design
+from benchlog.errors import Misuse
 from benchlog.extract.bound import lowest_corner_hz
+from benchlog.extract.by_design import SHAPE as BY_DESIGN
+from benchlog.extract.by_design import figures_by_design
 from benchlog.extract.choose import Choice, choose, shape_named
 from benchlog.extract.draw import drawn
 from benchlog.extract.implied import Implied
@@ -22,7 +25,6 @@ from benchlog.extract.reduce import (
 )
 from benchlog.extract.sentences import reasons_of
 from benchlog.extract.through_design import (
-    PARTS,
     ThroughDesign,
     at_least,
     corner_is_the_amplifiers,
@@ -30,7 +32,7 @@ from benchlog.extract.through_design import (
     has_noise_gain,
 )
 from benchlog.extract.told import seen_of, tried, why
-from benchlog.extract.uncertainty import Cause, figure, scatter_cause, shares_of, term_causes
+from benchlog.extract.uncertainty import PARTS, Cause, figure, scatter_cause, shares_of, term_causes
 from benchlog.extract.validity import FIGURES_TAKEN, Fault
 from benchlog.notation import decibels
 from benchlog.records import Figure, Figures, TermShare
@@ -39,6 +41,8 @@ METHOD = "2"
 _DB_PER_NEPER = 20.0 / math.log(10.0)
 _UNITS = {"gain": "V/V", "gain_db": "dB", "peaking_db": "dB"}
 CHOICE = "choice of shape"
+_UNEXPLAINED = Fault.POOR_FIT | Fault.NOT_CONVERGED
+_EXPLAINS = "No simpler shape explains the curve, and the design's own response does."
 _UNREACHED = Fault.CORNER_ABOVE_SWEEP | Fault.FEW_PAST_CORNER
 _USELESS = Fault.TOO_FEW_POINTS | Fault.NOT_CONVERGED | Fault.POOR_FIT | Fault.PLATEAU_NOT_REACHED
 
@@ -49,14 +53,15 @@ def extract(curve: GainCurve, design: Design | None = None, *, shape: str = "aut
     Args:
         curve: What was measured; flagged points are left out of the fit.
         design: What the board is built to: gives GBW its noise gain.
-        shape: ``"auto"``, or a name that ``choose.shape_named`` knows: ``"two-pole"``.
+        shape: ``"auto"``, ``"design"`` (the design's own response), or a name that
+            ``choose.shape_named`` knows: ``"two-pole"``.
 
     Returns:
         Figures with their uncertainties and term tables.  What the curve cannot carry is None,
         or a bound, with a reason in ``validity``; this function does not raise for it.
 
     Raises:
-        Misuse: There is no such shape.
+        Misuse: There is no such shape, or no design to take it from.
     """
     data = prepare(
         curve.frequency_hz[None, :],
@@ -66,7 +71,7 @@ def extract(curve: GainCurve, design: Design | None = None, *, shape: str = "aut
         phase_deg=None if curve.phase_deg is None else curve.phase_deg[None, :],
         u_phase_deg=None if curve.u_phase_deg is None else curve.u_phase_deg[None, :],
     )
-    choice = choose(data, design, shape=shape)
+    choice = choose(data, design, shape="auto" if shape == BY_DESIGN else shape)
     left_out = tuple(int(place) for place in np.flatnonzero(~curve.usable | choice.wild[0]))
     reduced = choice.tried[choice.chosen[0]]
     if too_few(reduced)[0]:
@@ -76,6 +81,16 @@ def extract(curve: GainCurve, design: Design | None = None, *, shape: str = "aut
             method=METHOD,
             left_out=left_out,
         )
+    if shape == BY_DESIGN:
+        if not has_noise_gain(design):
+            raise Misuse("the shape design needs a design with an amplifier in a loop")
+        return figures_by_design(
+            curve, design, choice, because="It is the shape that was asked for.", method=METHOD
+        )
+    if shape == "auto" and has_noise_gain(design) and reduced.faults[0] & int(_UNEXPLAINED):
+        through = figures_by_design(curve, design, choice, because=_EXPLAINS, method=METHOD)
+        if not any("gain" in reason.figures for reason in through.validity):
+            return through
     runner_up = None
     if choice.runner_up[0] >= 0:
         runner_up = _Drawing(curve, design, choice.tried[choice.runner_up[0]])

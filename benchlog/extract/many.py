@@ -7,7 +7,8 @@ import numpy.typing as npt
 
 from benchlog.curve import FloatArray, FloatsLike, GainCurve
 from benchlog.design.model import Design
-from benchlog.errors import CurveError
+from benchlog.errors import CurveError, Misuse
+from benchlog.extract.by_design import SHAPE as BY_DESIGN
 from benchlog.extract.choose import choose, shape_named
 from benchlog.extract.draw import drawn
 from benchlog.extract.figures import extract
@@ -19,6 +20,7 @@ from benchlog.extract.validity import FIGURES_TAKEN, Fault
 _DB_PER_NEPER = 20.0 / np.log(10.0)
 # So many sweeps at a time keep the working arrays in the processor's cache.
 _CHUNK = 512
+_LONGEST_NAME = 40
 FIGURES = (
     "gain",
     "gain_db",
@@ -49,7 +51,7 @@ def extract_many(
         design: What the boards are built to.
         phase_deg: Degrees, fitted together with gain; shape that broadcasts to gain's.
         u_gain_rel: Relative standard uncertainty of each gain, shape that broadcasts to gain's.
-        shape: ``"auto"``, or a name that ``choose.shape_named`` knows.
+        shape: ``"auto"``, ``"design"``, or a name that ``choose.shape_named`` knows.
 
     Returns:
         Arrays of shape (sweeps,): each name of ``FIGURES`` and the same with ``u_`` before it, NaN
@@ -60,8 +62,7 @@ def extract_many(
         CurveError: Shapes do not fit together.
         Misuse: There is no such shape.
     """
-    if shape != "auto":
-        shape_named(shape)
+    _check_shape(shape, design)
     gains = np.asarray(gain, dtype=float)
     if gains.ndim != 2:
         raise CurveError(
@@ -83,6 +84,13 @@ def extract_many(
     return {name: np.concatenate([chunk[name] for chunk in chunks]) for name in chunks[0]}
 
 
+def _check_shape(shape: str, design: Design | None) -> None:
+    if shape == BY_DESIGN and not has_noise_gain(design):
+        raise Misuse("the shape design needs a design with an amplifier in a loop")
+    if shape not in {"auto", BY_DESIGN}:
+        shape_named(shape)
+
+
 def _data(
     frequency_hz: FloatArray,
     gain: FloatArray,
@@ -100,7 +108,7 @@ def _data(
 
 
 def _chunk(data: Data, design: Design | None, shape: str) -> dict[str, npt.NDArray[Any]]:
-    choice = choose(data, design, shape=shape)
+    choice = choose(data, design, shape="auto" if shape == BY_DESIGN else shape)
     needed = set(choice.chosen.tolist()) | set(choice.runner_up.tolist()) - {-1}
     through = design if has_noise_gain(design) else None
     by_corner = through is None or corner_is_the_amplifiers(through.chain())
@@ -120,18 +128,26 @@ def _chunk(data: Data, design: Design | None, shape: str) -> dict[str, npt.NDArr
         other = _taken(by_shape, choice.runner_up, name)
         apart = np.where(np.isfinite(other), other - value, 0.0)
         answer[name], answer[f"u_{name}"] = value, np.hypot(u, apart)
-    if through is not None and not by_corner:
-        _gbw_one_by_one(answer, data, through, shape=shape)
+    if through is not None:
+        unexplained = (answer["validity"] & int(Fault.POOR_FIT | Fault.NOT_CONVERGED)) != 0
+        every = not by_corner or shape == BY_DESIGN
+        rows_left = np.arange(rows) if every else np.flatnonzero(unexplained & (shape == "auto"))
+        _one_by_one(answer, data, through, shape=shape, rows=rows_left)
     return answer
 
 
-def _gbw_one_by_one(
-    answer: dict[str, npt.NDArray[Any]], data: Data, design: Design, *, shape: str
+def _one_by_one(
+    answer: dict[str, npt.NDArray[Any]],
+    data: Data,
+    design: Design,
+    *,
+    shape: str,
+    rows: npt.NDArray[np.int64],
 ) -> None:
-    """Take GBW and validity from ``extract``, where the whole curve is needed for the GBW."""
-    for row, weight in enumerate(data.weight):
-        answer["gbw_hz"][row] = answer["u_gbw_hz"][row] = np.nan
-        counts = weight > 0
+    """Take the figures from ``extract``, where the design's own response is needed for them."""
+    answer["shape"] = answer["shape"].astype(f"U{_LONGEST_NAME}")
+    for row in rows:
+        counts = data.weight[row] > 0
         if not counts.any():
             continue
         figures = extract(
@@ -139,14 +155,18 @@ def _gbw_one_by_one(
                 np.exp(data.ln_frequency[row][counts]),
                 np.exp(data.ln_gain[row][counts]),
                 None if data.phase is None else np.degrees(data.phase.radians[row][counts]),
-                u_gain_rel=weight[counts] ** -0.5 if data.stated else None,
+                u_gain_rel=data.weight[row][counts] ** -0.5 if data.stated else None,
             ),
             design,
             shape=shape,
         )
+        answer["shape"][row] = figures.shape
         answer["validity"][row] = faults_behind(figures.validity)
-        if figures.gbw_hz is not None and figures.gbw_hz.u is not None:
-            answer["gbw_hz"][row], answer["u_gbw_hz"][row] = figures.gbw_hz.value, figures.gbw_hz.u
+        for name in FIGURES:
+            one = figures.figure(name)
+            known = one is not None and one.u is not None
+            answer[name][row] = one.value if one is not None and known else np.nan
+            answer[f"u_{name}"][row] = one.u if one is not None and known else np.nan
 
 
 def _taken(

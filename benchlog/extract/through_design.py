@@ -14,11 +14,9 @@ from benchlog.design.model import Design
 from benchlog.extract.models.designed import Designed
 from benchlog.extract.profile import GbwProfile, Profile
 from benchlog.extract.reduce import Reduced
-from benchlog.extract.uncertainty import SCATTER, Cause, figure, shares_of, term_causes
+from benchlog.extract.uncertainty import Cause, design_causes, figure, shares_of
 from benchlog.extract.validity import Fault
 from benchlog.records import Figure
-
-PARTS = "tolerance of the parts"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -58,9 +56,7 @@ def gbw_through_design(curve: GainCurve, design: Design, reduced: Reduced) -> Th
         design: Has an amplifier whose GBW is the figure.
         reduced: The shape chosen for the curve: its residuals are the noise where none is stated.
     """
-    u_scale = math.hypot(*(term.u_rel for term in curve.terms if term.kind == "scale"))
-    source_ohm = 0.0 if curve.reference == "input" else (curve.source_ohm or 0.0)
-    shape = Designed(design.chain(), source_ohm=source_ohm, u_scale=u_scale)
+    shape = designed(curve, design)
     weight = reduced.data.weight[0]
     counts = weight > 0
     stated = reduced.data.stated
@@ -86,6 +82,13 @@ def gbw_through_design(curve: GainCurve, design: Design, reduced: Reduced) -> Th
     return ThroughDesign(figure=number, faults=0, hidden_by="")
 
 
+def designed(curve: GainCurve, design: Design) -> Designed:
+    """Return the design's response as this curve sees it."""
+    u_scale = math.hypot(*(term.u_rel for term in curve.terms if term.kind == "scale"))
+    source_ohm = 0.0 if curve.reference == "input" else (curve.source_ohm or 0.0)
+    return Designed(design.chain(), source_ohm=source_ohm, u_scale=u_scale)
+
+
 def at_least(found: Figure | None) -> Figure | None:
     """Return a number as its lower bound (95 %, one side); a bound stays as it is."""
     if found is None or found.u is None:
@@ -97,26 +100,15 @@ def at_least(found: Figure | None) -> Figure | None:
 def _causes(
     curve: GainCurve, shape: Designed, *, profile: Profile, reduced: Reduced
 ) -> list[Cause]:
-    """Return what makes the GBW uncertain; the covariances add up to that of the whole fit."""
     counts = reduced.data.weight[0] > 0
     weight = reduced.data.weight[0][counts]
-    dof = math.inf
-    if not reduced.data.stated:
-        weight = weight / profile.noise_rel**2
-        dof = float(reduced.dof[0])
-    covariance = profile.fit.inverse_normal[0]
-    derivatives = profile.fit.derivatives[0]
-    information = (derivatives * weight[:, None]).T @ derivatives
-    causes = [
-        Cause(name=SCATTER, kind="A", covariance=covariance @ information @ covariance, dof=dof)
-    ]
-    scale = np.array([name == "ln_scale" for name in shape.parameters])
-    for name, which in ((PARTS, ~scale), ("scale of the readings", scale)):
-        known = np.diag(np.where(which, shape.prior_weight, 0.0))
-        causes.append(
-            Cause(name=name, kind="B", covariance=covariance @ known @ covariance, dof=math.inf)
-        )
-    others = [term for term in curve.terms if term.kind != "scale"]
-    return causes + term_causes(
-        others, profile.fit, frequency_hz=curve.frequency_hz[counts], weight=weight
+    stated = reduced.data.stated
+    return design_causes(
+        curve.terms,
+        profile.fit,
+        parameters=shape.parameters,
+        prior_weight=shape.prior_weight,
+        frequency_hz=curve.frequency_hz[counts],
+        weight=weight if stated else weight / profile.noise_rel**2,
+        dof=math.inf if stated else float(reduced.dof[0]),
     )

@@ -22,6 +22,7 @@ from benchlog.records import Bound, Figure, Term, TermShare
 # 95.45 % two-sided, the level that makes k = 2 for the normal distribution (JCGM 100, 6.3.3).
 _UPPER_TAIL = 0.977249868051821
 SCATTER = "scatter of the readings"
+PARTS = "tolerance of the parts"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -134,3 +135,36 @@ def term_causes(
             covariance = np.outer(shift, shift)
         causes.append(Cause(name=term.name, kind="B", covariance=covariance, dof=term.dof))
     return causes
+
+
+def design_causes(  # noqa: PLR0913 - what one fit with priors was made of
+    terms: Sequence[Term],
+    fit: Fit,
+    *,
+    parameters: Sequence[str],
+    prior_weight: FloatArray,
+    frequency_hz: FloatArray,
+    weight: FloatArray,
+    dof: float,
+) -> list[Cause]:
+    """Return the causes of a fit with priors; their covariances add up to that of the fit.
+
+    Args:
+        terms: Of the curve; its scale terms are the prior of ``ln_scale``.
+        fit: Of one sweep.
+        parameters: Their names.
+        prior_weight: Inverse variances of what was known beforehand.
+        frequency_hz: Shape (points,).
+        weight: Inverse variances, shape (points,).
+        dof: Of the scatter.
+    """
+    covariance, derivatives = fit.inverse_normal[0], fit.derivatives[0]
+    information = (derivatives * weight[:, None]).T @ derivatives
+    scatter = covariance @ information @ covariance
+    causes = [Cause(name=SCATTER, kind="A", covariance=scatter, dof=dof)]
+    scale = np.array([name == "ln_scale" for name in parameters])
+    for name, which in ((PARTS, ~scale), ("scale of the readings", scale)):
+        known = covariance @ np.diag(np.where(which, prior_weight, 0.0)) @ covariance
+        causes.append(Cause(name=name, kind="B", covariance=known, dof=math.inf))
+    others = [term for term in terms if term.kind != "scale"]
+    return causes + term_causes(others, fit, frequency_hz=frequency_hz, weight=weight)

@@ -104,7 +104,7 @@ def faults_of(
     rows = [
         (Fault.TOO_FEW_POINTS, few),
         (Fault.NOT_CONVERGED, ~few & ~above & ~fit.converged),
-        (Fault.POOR_FIT, ~few & _poor(fit, ln_frequency, weight, stated=stated)),
+        (Fault.POOR_FIT, ~few & poor(fit, ln_frequency, weight, stated=stated)),
         (Fault.CORNER_ABOVE_SWEEP, ~few & above),
         (Fault.FEW_PAST_CORNER, ~few & ~above & (past < FEWEST_PAST_CORNER)),
     ]
@@ -132,7 +132,7 @@ def _of_band(
     ]
 
 
-def _poor(
+def poor(
     fit: Fit, ln_frequency: FloatArray, weight: FloatArray, *, stated: bool
 ) -> npt.NDArray[np.bool_]:
     """Tell residuals that this shape cannot explain.

@@ -5,9 +5,11 @@ import math
 import numpy as np
 import pytest
 
+from benchlog.circuit.nominal import nominal_figures
 from benchlog.curve import FloatArray, GainCurve
 from benchlog.design.model import Design
 from benchlog.design.read import parse_design
+from benchlog.errors import Misuse
 from benchlog.extract.figures import extract
 from benchlog.extract.many import extract_many
 from benchlog.extract.models.designed import Designed
@@ -197,3 +199,75 @@ def test_coverage_over_boards_with_spread_parts(boards: int) -> None:
             inside.append(abs(found.value - 2.6e6) < found.U)
     assert len(inside) > 0.95 * boards
     assert np.mean(inside) >= 0.92
+
+
+def test_shape_design() -> None:
+    """The design's own response gives the figures of the netlist it stands for."""
+    design = made(CAPACITOR, 'second_pole = "6 MHz"')
+    curve = measured(design, WIDE, gbw_hz=3e6, noise=1e-3)
+    figures = extract(curve, design, shape="design")
+    nominal = nominal_figures(design.chain())
+    assert figures.shape == "design"
+    assert figures.validity == ()
+    assert nominal.corner_hz is not None
+    for figure, truth in (
+        (figures.gain, nominal.gain),
+        (figures.corner_hz, nominal.corner_hz),
+        (figures.gbw_hz, 3e6),
+    ):
+        assert figure is not None
+        assert figure.u is not None
+        assert abs(figure.value - truth) < 3.5 * figure.u
+        total = math.sqrt(sum(term.u**2 for term in figure.terms))
+        assert total == pytest.approx(figure.u, rel=1e-9)
+
+
+def test_shape_design_keeps_the_bound() -> None:
+    """Gain and corner are numbers, the hidden GBW a bound."""
+    design = made(CAPACITOR)
+    figures = extract(measured(design, NARROW, noise=3e-3), design, shape="design")
+    assert figures.gbw_hz is not None
+    assert figures.gbw_hz.bound == "at least"
+    assert figures.corner_hz is not None
+    assert figures.corner_hz.u is not None
+    assert 0 < figures.corner_hz.u < 0.02 * figures.corner_hz.value
+
+
+def test_design_explains_what_no_simple_shape_does() -> None:
+    """A non-inverting stage with a feedback capacitor falls to a gain of one, not to zero."""
+    text = _TEXT.format(stage=CAPACITOR, amplifier="", resistor="1%", capacitor="10%")
+    text = text.replace('"inverting"', '"non-inverting"').replace("input =", "ground =")
+    design = parse_design(text, where="t")
+    curve = measured(design, np.logspace(2, 7.5, 56), noise=1e-3)
+    figures = extract(curve, design)
+    assert figures.shape == "design"
+    assert "own response" in figures.chosen_because
+    assert figures.gbw_hz is not None
+    assert figures.gbw_hz.u is not None
+    assert abs(figures.gbw_hz.value - 2.6e6) < 3.5 * figures.gbw_hz.u
+    many = extract_many(curve.frequency_hz, curve.gain[None, :], design)
+    assert many["shape"][0] == "design"
+    assert many["gbw_hz"][0] == pytest.approx(figures.gbw_hz.value, rel=1e-6)
+
+
+def test_shape_design_needs_a_design() -> None:
+    """Without one there is no such shape."""
+    curve = measured(made(), WIDE)
+    with pytest.raises(Misuse, match="needs a design"):
+        extract(curve, shape="design")
+    with pytest.raises(Misuse, match="needs a design"):
+        extract_many(WIDE, curve.gain[None, :], shape="design")
+
+
+def test_wild_point_beside_the_designs_response() -> None:
+    """The design's own fit finds a wild point, and figures are those without it."""
+    design = made(CAPACITOR, 'second_pole = "6 MHz"')
+    curve = measured(design, WIDE, noise=1e-3)
+    gain, rest = curve.gain.copy(), np.arange(len(curve)) != 20
+    gain[20] *= 1.05
+    figures = extract(GainCurve(WIDE, gain), design, shape="design")
+    without = extract(GainCurve(WIDE[rest], curve.gain[rest]), design, shape="design")
+    assert figures.left_out == (20,)
+    assert figures.gbw_hz is not None
+    assert without.gbw_hz is not None
+    assert figures.gbw_hz.value == pytest.approx(without.gbw_hz.value, rel=1e-6)

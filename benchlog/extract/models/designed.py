@@ -67,6 +67,16 @@ class Designed:
         values = np.log(np.abs(response))
         return np.asarray(values + parameters[:, -1:] if self._u_scale > 0 else values)
 
+    def ln_plateau(self, parameters: FloatArray) -> FloatArray:
+        """Return ln gain between the corners, shape (sweeps,)."""
+        factors = {
+            name: np.exp(parameters[:, place : place + 1])
+            for place, name in enumerate(self.parts, start=1)
+        }
+        gain = self.chain.plateau(factors=factors or None, source_ohm=self._source_ohm)
+        flat = np.broadcast_to(np.asarray(gain, dtype=float).reshape(-1), (len(parameters),))
+        return np.asarray(np.log(flat) + (parameters[:, -1] if self._u_scale > 0 else 0.0))
+
     def evaluate(
         self, parameters: FloatArray, ln_frequency: FloatArray
     ) -> tuple[FloatArray, FloatArray]:
