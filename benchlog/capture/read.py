@@ -2,7 +2,7 @@
 
 import hashlib
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 
@@ -12,6 +12,7 @@ from benchlog.capture.block import Block, find_block
 from benchlog.capture.channels import is_record
 from benchlog.capture.columns import find_columns
 from benchlog.capture.preamble import read_preamble
+from benchlog.capture.stream import STREAM_FROM_BYTES, stream_record
 from benchlog.capture.table import swept_curve
 from benchlog.capture.text import decode
 from benchlog.capture.waveform import RecordPoint, point_of, read_records
@@ -62,11 +63,13 @@ class Told:
         units: By kind or column name: ``{"gain": "dB"}``.
         columns: Which column is what: ``{"input": "CH1"}``.
         frequency_hz: Of time records, where it is known better than they tell.
+        progress: Told the part of a large file that was read, 0 to 1.
     """
 
     units: Mapping[str, str] = field(default_factory=dict)
     columns: Mapping[str, str] = field(default_factory=dict)
     frequency_hz: float | None = None
+    progress: Callable[[float], None] | None = None
 
 
 def read_capture(
@@ -143,6 +146,9 @@ def capture_files(path: Path) -> list[Path]:
 
 
 def _read(path: Path, told: Told, design: Design | None) -> "Capture | ReadRecord":
+    """Read one file: a large one in chunks, any other whole."""
+    if path.is_file() and path.stat().st_size >= STREAM_FROM_BYTES:
+        return _read_large(path, told)
     data = _bytes(path)
     try:
         text = decode(data)
@@ -166,6 +172,17 @@ def _read(path: Path, told: Told, design: Design | None) -> "Capture | ReadRecor
         understood={**understood, "columns": named},
         notes=(*block.notes, *notes, *_slip(curve, design)),
     )
+
+
+def _read_large(path: Path, told: Told) -> ReadRecord:
+    try:
+        found = stream_record(path, asked={**told.units, **told.columns}, progress=told.progress)
+    except CaptureError as error:
+        raise error.at(str(path)) from error
+    understood = _understood(found.encoding, found.block)
+    understood["rows"] = f"{found.rows}, from line {found.block.first_line}"
+    del understood["last row"]
+    return ReadRecord(path=path, sha256=found.sha256, understood=understood, points=(found.point,))
 
 
 def _joined(records: Sequence[ReadRecord], design: Design | None) -> Capture:

@@ -131,10 +131,28 @@ def point_of(record: Record, frequency_hz: float | None = None) -> RecordPoint:
         else fit_known(record.time_s, record.volts, frequency_hz)
     )
     step_s = float(record.time_s[-1] - record.time_s[0]) / (count - 1)
+    seen = quality(record.volts, fit, step_s)
+    return sampled_point(fit, seen, step_s=step_s, count=count, notes=record.notes)
+
+
+def sampled_point(
+    fit: Sines, seen: "Quality", *, step_s: float, count: int, notes: tuple[str, ...]
+) -> RecordPoint:
+    """Return the point of a fit.
+
+    Args:
+        fit: Of both channels, input first.
+        seen: What the samples say beside the sine.
+        step_s: Sample interval.
+        count: Samples in each channel.
+        notes: What was done to the record.
+
+    Raises:
+        CaptureError: Too few samples or cycles, or no sine is there.
+    """
     cycles = fit.frequency_hz * step_s * count
     _check(fit, cycles, per_cycle=count / cycles)
-    distortion = _distortion(record, fit)
-    flags, notes = _care(record, fit, cycles=cycles, distortion=distortion)
+    flags, care = _care(fit, seen, cycles=cycles, per_cycle=count / cycles)
     u_rel = fit.u_amplitude / fit.amplitude
     phase = float(np.degrees(fit.phase_rad[1] - fit.phase_rad[0]))
     return RecordPoint(
@@ -148,11 +166,30 @@ def point_of(record: Record, frequency_hz: float | None = None) -> RecordPoint:
         output_v=float(fit.amplitude[1]),
         samples_per_s=1.0 / step_s,
         cycles=cycles,
-        distortion=distortion,
+        distortion=seen.distortion,
         residual=float(fit.residual_rms[1] / (fit.amplitude[1] / np.sqrt(2.0))),
         flags=flags,
-        notes=(*record.notes, *notes),
+        notes=(*notes, *care),
     )
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Quality:
+    """What samples say beside the sine: which channels are clipped, harmonics of the output."""
+
+    clipped: tuple[Side, ...]
+    distortion: float
+
+
+def quality(volts: FloatArray, fit: Sines, step_s: float) -> Quality:
+    """Look at samples, shape (2, n), and the residuals of their fit."""
+    per_cycle = 1.0 / (fit.frequency_hz * step_s)
+    clipped = tuple(
+        side
+        for place, side in enumerate(SIDES)
+        if _is_clipped(volts[place], float(fit.amplitude[place]), per_cycle)
+    )
+    return Quality(clipped=clipped, distortion=_distortion(fit, step_s))
 
 
 def _times(
@@ -250,19 +287,17 @@ def _check(fit: Sines, cycles: float, *, per_cycle: float) -> None:
 
 
 def _care(
-    record: Record, fit: Sines, *, cycles: float, distortion: float
+    fit: Sines, seen: Quality, *, cycles: float, per_cycle: float
 ) -> tuple[PointFlag, tuple[str, ...]]:
     """Return flags and notes on what makes a record less than good."""
     flags, notes = PointFlag.NONE, []
     at = f"at {si(fit.frequency_hz, 'Hz')}"
-    per_cycle = record.time_s.size / cycles
-    for place, side in enumerate(("input", "output")):
-        if _is_clipped(record.volts[place], float(fit.amplitude[place]), per_cycle):
-            flags |= PointFlag.CLIPPED
-            notes.append(f"the {side} is clipped {at}: flat tops at its extremes")
-    if distortion > MOST_DISTORTION:
+    for side in seen.clipped:
+        flags |= PointFlag.CLIPPED
+        notes.append(f"the {side} is clipped {at}: flat tops at its extremes")
+    if seen.distortion > MOST_DISTORTION:
         flags |= PointFlag.DISTORTED
-        notes.append(f"the output is distorted {at}: harmonics are {100 * distortion:.1f} %")
+        notes.append(f"the output is distorted {at}: harmonics are {100 * seen.distortion:.1f} %")
     if per_cycle < GOOD_PER_CYCLE:
         notes.append(f"only {plain(per_cycle, 2)} samples for each cycle {at}")
     if cycles < GOOD_CYCLES:
@@ -286,14 +321,13 @@ def _longest_run(where: np.ndarray[tuple[int, ...], np.dtype[np.bool_]]) -> int:
     return int((edges[1::2] - edges[0::2]).max(initial=0))
 
 
-def _distortion(record: Record, fit: Sines) -> float:
-    """Return the harmonics of the output, from what the sine leaves."""
-    step_s = float(record.time_s[1] - record.time_s[0])
-    nyquist_hz = 0.5 / step_s
+def _distortion(fit: Sines, step_s: float) -> float:
+    """Return the harmonics of the output over its fundamental, from what the sine leaves."""
+    left = fit.residuals[1]
     total = 0.0
     for order in _HARMONICS:
-        harmonic_hz = order * fit.frequency_hz
-        if harmonic_hz < nyquist_hz:
-            turned = np.exp(-2j * np.pi * harmonic_hz * record.time_s)
-            total += abs(2.0 * (fit.residuals[1] * turned).mean()) ** 2
-    return float(np.sqrt(total) / fit.amplitude[1])
+        cycles_per_sample = order * fit.frequency_hz * step_s
+        if cycles_per_sample < 0.5:
+            turned = np.exp(-2j * np.pi * cycles_per_sample * np.arange(left.size))
+            total += abs(2.0 * (left * turned).mean()) ** 2
+    return float(np.sqrt(total) / fit.amplitude[1]) if fit.amplitude[1] > 0 else 0.0
