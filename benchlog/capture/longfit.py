@@ -161,6 +161,10 @@ def _sines(
 ) -> Sines:
     parameters, inverse, left = _linear(moments)
     _, free, onto, _ = _slopes(moments)
+    # The slopes turn about the middle of the record; phases are told for its first sample.
+    onto = onto + 0.5 * np.stack(
+        [parameters[:, 1], -parameters[:, 0], np.zeros(len(parameters))], axis=1
+    )
     variance = left / (count - 4)
     weight = _weights(left)
     information = float((weight * free).sum())
