@@ -4,6 +4,7 @@ Open means identified.  A link that may hold half an exchange is dirty and takes
 ``recover`` and ``close``.  Seconds outside, milliseconds only here.
 """
 
+import select
 import socket
 import time
 from collections.abc import Iterator
@@ -198,9 +199,11 @@ class _Transport:
         """Clear the instrument where its transport can, then read until nothing more comes."""
         if self._resource is None:
             return
-        # Sockets and simulators know no device clear, or only half of it.
-        with suppress(Exception):
-            self._resource.clear()
+        # pyvisa-py's clear of a socket only reads, and reads for ever once the far end has closed.
+        if self._socket() is None:
+            # Simulators and some transports know no device clear.
+            with suppress(Exception):
+                self._resource.clear()
         for _ in range(_MOST_DRAINED):
             try:
                 self.read("", _QUIET_S)
@@ -254,15 +257,19 @@ class _Transport:
 
     def _peeked(self) -> bytes | None:
         """Look at what a socket holds: nothing is None, the end of the stream is empty bytes."""
-        wire = getattr(self._session(), "interface", None)
-        if not isinstance(wire, socket.socket):
+        wire = self._socket()
+        if wire is None:
             return None
         try:
-            return wire.recv(_PEEKED_BYTES, socket.MSG_PEEK | socket.MSG_DONTWAIT)
-        except BlockingIOError:
-            return None
+            ready, _, _ = select.select([wire], [], [], 0.0)
+            return wire.recv(_PEEKED_BYTES, socket.MSG_PEEK) if ready else None
         except OSError:
             return b""
+
+    def _socket(self) -> socket.socket | None:
+        """Return the socket beneath, where there is one."""
+        wire = getattr(self._session(), "interface", None)
+        return wire if isinstance(wire, socket.socket) else None
 
     def _session(self) -> object:
         """Return pyvisa-py's own session object; other backends have none."""
