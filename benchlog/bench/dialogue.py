@@ -68,7 +68,8 @@ class Dialogue:
             ReplyError: The answer follows no grammar.
         """
         text = self.driver.text(action, frequency_hz=frequency_hz)
-        reply = self._ask(text, self.driver.messages[action].timeout_s)
+        reading_s = self.driver.reading_s(frequency_hz)
+        reply = self._ask(text, self.driver.messages[action].timeout_s + reading_s)
         try:
             return parse_number(reply, self.driver.grammars[action]), reply
         except ReplyError as error:

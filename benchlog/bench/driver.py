@@ -32,11 +32,20 @@ _PER_VRMS = {"Vrms": 1.0, "Vpk": math.sqrt(2.0), "Vpp": math.sqrt(8.0)}
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class LinkSettings:
-    """How a wire behaves: terminators, and how long an answer may take by default."""
+    """How a wire behaves.
+
+    Attributes:
+        read_terminator, write_terminator: What ends an answer, and what ends a message.
+        timeout_s: How long an answer may take where its message says nothing else.
+        gap_s: Pause that the instrument needs before each message.
+        after_open_s: Pause that it needs once the link is open.
+    """
 
     read_terminator: str = "\n"
     write_terminator: str = "\n"
     timeout_s: float = 2.0
+    gap_s: float = 0.0
+    after_open_s: float = 0.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

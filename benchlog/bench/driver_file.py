@@ -22,6 +22,8 @@ class LinkTable(_Table, frozen=True, kw_only=True):
     read_terminator: Literal["\n", "\r\n", "\r"] = "\n"
     write_terminator: Literal["\n", "\r\n", "\r"] = "\n"
     timeout: Quantity = "2 s"
+    gap: Quantity = "0 s"
+    after_open: Quantity = "0 s"
 
 
 class NumbersTable(_Table, frozen=True, kw_only=True):

@@ -100,6 +100,8 @@ def _driver(file: DriverFile, content: bytes) -> Driver:
             read_terminator=file.link.read_terminator,
             write_terminator=file.link.write_terminator,
             timeout_s=_above_zero(timeout_s, "link.timeout"),
+            gap_s=second(file.link.gap, field="link.gap"),
+            after_open_s=second(file.link.after_open, field="link.after_open"),
         ),
         numbers=NumberForm(style=file.numbers.style, digits=file.numbers.digits),
         messages={action: _message(file, action, timeout_s=timeout_s) for action in file.message},

@@ -18,11 +18,10 @@ from pyvisa.resources import MessageBasedResource
 from pyvisa.rname import InvalidResourceName, ResourceName
 
 from benchlog.bench.driver import LinkSettings
-from benchlog.bench.recover import IDENTIFY, recover_link
+from benchlog.bench.recover import identify, recover_link
 from benchlog.bench.reply import parse_identity
 from benchlog.errors import (
     BenchlogError,
-    LinkError,
     LinkLost,
     LinkRefused,
     LinkTimeout,
@@ -70,9 +69,9 @@ def open_link(
     transport = _Transport(address, rules, backend)
     try:
         transport.open(timeout_s or rules.timeout_s)
-        identity = transport.ask(IDENTIFY, timeout_s or rules.timeout_s)
+        identity = identify(transport, timeout_s=timeout_s or rules.timeout_s)
         parse_identity(identity)
-    except (LinkError, ReplyError) as error:
+    except (LinkTimeout, LinkLost, ReplyError) as error:
         transport.close()
         raise LinkRefused(
             f"the instrument did not identify itself: {error.what}",
@@ -100,12 +99,12 @@ class VisaWire:
 
     def send(self, message: str) -> None:
         """Send a message that has no answer."""
-        with self._exchange():
+        with self._exchange(message):
             self._transport.send(message, self._timeout_s)
 
     def ask(self, message: str, *, timeout_s: float) -> str:
         """Send a message whose last line is a query, and return the answer."""
-        with self._exchange():
+        with self._exchange(message):
             return self._transport.ask(message, timeout_s)
 
     def recover(self) -> None:
@@ -122,7 +121,9 @@ class VisaWire:
         self._transport.close()
 
     @contextmanager
-    def _exchange(self) -> Iterator[None]:
+    def _exchange(self, message: str) -> Iterator[None]:
+        if not message.isascii():
+            raise Misuse(f"only ASCII can be sent to an instrument, not {message!r}")
         if self._closed:
             raise Misuse(f"the link to {self.address} is closed")
         if self.dirty:
@@ -155,6 +156,7 @@ class _Transport:
         self._settings = settings
         self._backend = backend
         self._resource: MessageBasedResource | None = None
+        self._free_at_s = 0.0
 
     def open(self, timeout_s: float) -> None:
         """Open or reopen; says nothing yet about whether anybody is there."""
@@ -172,17 +174,20 @@ class _Transport:
             raise LinkRefused(
                 f"the link cannot be opened: {_first_line(error)}",
                 where=self.address,
-                hint="check address, power and cable; `benchlog bench check` says more",
+                hint=_opening_hint(self.address, error),
             ) from error
         self._resource = cast("MessageBasedResource", resource)
+        time.sleep(self._settings.after_open_s)
 
     def send(self, message: str, timeout_s: float) -> None:
         """Write a whole message in one go: separate writes wait for each other on a network."""
         end = self._settings.write_terminator
         data = (message.replace("\n", end) + end).encode("ascii")
+        time.sleep(max(0.0, self._free_at_s - time.monotonic()))
         with self._translated(message, timeout_s) as resource:
             resource.timeout = _milliseconds(timeout_s)
             resource.write_raw(data)
+        self._free_at_s = time.monotonic() + self._settings.gap_s
 
     def ask(self, message: str, timeout_s: float) -> str:
         """Write a message and read one answer."""
@@ -193,7 +198,9 @@ class _Transport:
         """Read one answer, without terminator and padding."""
         with self._translated(asked, timeout_s) as resource:
             resource.timeout = _milliseconds(timeout_s)
-            return bytes(resource.read_raw()).decode("latin-1").strip(_PADDING)
+            answer = bytes(resource.read_raw()).decode("latin-1").strip(_PADDING)
+        self._free_at_s = time.monotonic() + self._settings.gap_s
+        return answer
 
     def drain(self) -> None:
         """Clear the instrument where its transport can, then read until nothing more comes."""
@@ -294,6 +301,15 @@ def _check_address(address: str) -> None:
             where="address",
             expected='a VISA resource name, like "TCPIP::192.0.2.7::5025::SOCKET"',
         ) from error
+
+
+def _opening_hint(address: str, error: Exception) -> str:
+    """Tell a missing package from a missing instrument."""
+    kinds = (("ASRL", "serial"), ("USB", "usb"), ("GPIB", "gpib"))
+    extra = next((extra for kind, extra in kinds if address.upper().startswith(kind)), None)
+    if extra is not None and isinstance(error, ValueError):
+        return f'install what this kind of link needs: pip install "benchlog[{extra}]"'
+    return "check address, power and cable; `benchlog bench check` says more"
 
 
 def _milliseconds(seconds: float) -> int:

@@ -1,4 +1,8 @@
-"""Making a dirty link clean again, so that no late answer is taken for another."""
+"""Knowing who answers, at the start and after trouble, so that no late answer is taken for another.
+
+Answers come in the order of the questions: once the identity has come, everything asked before
+has come too, and the next question is answered by its own answer.
+"""
 
 from typing import Protocol
 
@@ -7,6 +11,8 @@ from benchlog.errors import IdentityError, LinkError, LinkLost, LinkTimeout
 IDENTIFY = "*IDN?"
 # Late answers that may stand before the one that was asked for.
 _MOST_STALE = 8
+# IEEE 488.2: maker, model, serial number, firmware.
+_COMMAS = 3
 
 
 class Transport(Protocol):
@@ -29,12 +35,24 @@ class Transport(Protocol):
         """Throw away what has arrived."""
 
 
+def identify(transport: Transport, *, timeout_s: float) -> str:
+    """Ask who is there, when nothing is known yet.
+
+    Some instruments still hold an answer for whoever used them before.  An answer that has not
+    the four fields of an identity is believed only when it comes twice.
+
+    Raises:
+        LinkError: Nothing answers.
+    """
+    answer = transport.ask(IDENTIFY, timeout_s)
+    if answer.count(",") >= _COMMAS or transport.ask(IDENTIFY, timeout_s) == answer:
+        return answer
+    transport.drain()
+    return transport.ask(IDENTIFY, timeout_s)
+
+
 def recover_link(transport: Transport, identity: str, *, timeout_s: float) -> None:
     """Drain, identify, and reopen where that does not help.
-
-    Answers come in the order of the questions, so once the identity has come, everything asked
-    before has come too; a second identification must then be answered at once by the identity
-    and nothing else.
 
     Args:
         transport: The carrier.
@@ -47,14 +65,14 @@ def recover_link(transport: Transport, identity: str, *, timeout_s: float) -> No
     """
     try:
         transport.drain()
-        if _is_back(transport, identity, timeout_s):
+        if _who_answers(transport, identity, timeout_s) == identity:
             return
     except LinkError:
         # The reason no longer matters: reopening is the next remedy for all of them.
         pass
     try:
         transport.open(timeout_s)
-        answer = transport.ask(IDENTIFY, timeout_s)
+        answer = _who_answers(transport, identity, timeout_s)
     except LinkError as error:
         raise LinkLost(
             f"the instrument does not come back: {error.what}",
@@ -70,16 +88,18 @@ def recover_link(transport: Transport, identity: str, *, timeout_s: float) -> No
         )
 
 
-def _is_back(transport: Transport, identity: str, timeout_s: float) -> bool:
-    """Tell whether the instrument answers in step again."""
+def _who_answers(transport: Transport, identity: str, timeout_s: float) -> str:
+    """Return the identity once the instrument answers in step, else what came in its place.
+
+    Late answers may stand before it; a second question must then be answered by the identity
+    and nothing else.
+    """
     answer = transport.ask(IDENTIFY, timeout_s)
-    stale = 0
-    while answer != identity:
-        stale += 1
-        if stale > _MOST_STALE:
-            return False
+    for _ in range(_MOST_STALE):
+        if answer == identity:
+            return transport.ask(IDENTIFY, timeout_s)
         try:
             answer = transport.read(IDENTIFY, timeout_s)
         except LinkTimeout:
-            return False
-    return transport.ask(IDENTIFY, timeout_s) == identity
+            break
+    return answer
