@@ -9,22 +9,44 @@ from benchlog.errors import BenchlogError
 from benchlog.records import Reading, Status, Term
 
 
+def display_ratio(*, load_ohm: float | None, source_ohm: float) -> float:
+    """Return what a source's display shows over the level at its open output.
+
+    A source that counts with a load shows what it would give into that load.  A board draws next
+    to nothing and gets the open-circuit level: twice the display at 50 ohm and 50 ohm.
+
+    Args:
+        load_ohm: What the display counts with; None is taken as high impedance.
+        source_ohm: Output resistance of the source.
+    """
+    if load_ohm is None or math.isinf(load_ohm):
+        return 1.0
+    return load_ohm / (load_ohm + source_ohm)
+
+
 class Source:
-    """The signal source.
+    """The signal source; levels are open-circuit levels, V RMS.
 
     Args:
         wire: An open link to it.
         driver: How to talk to it.
         load_ohm: What its display is to count with, infinity for high impedance; None leaves it
             as it is.
-        role: Its name in messages.
+        display_ratio: What its display shows over the open-circuit level; see ``display_ratio``.
     """
 
     def __init__(
-        self, wire: Wire, driver: Driver, *, load_ohm: float | None = None, role: str = "source"
+        self,
+        wire: Wire,
+        driver: Driver,
+        *,
+        load_ohm: float | None = None,
+        display_ratio: float = 1.0,
     ) -> None:
-        self._dialogue = Dialogue(wire, driver, role=role)
+        self._dialogue = Dialogue(wire, driver, role="source")
         self._load_ohm = load_ohm
+        self._display_ratio = display_ratio
+        self._closed = False
 
     @property
     def identity(self) -> str:
@@ -46,8 +68,10 @@ class Source:
         self._dialogue.check_errors()
 
     def set_point(self, *, frequency_hz: float, level_vrms: float) -> None:
-        """Program frequency and level; the output stays as it is."""
-        self._dialogue.order("set_point", frequency_hz=frequency_hz, level_vrms=level_vrms)
+        """Program frequency and open-circuit level; the output stays as it is."""
+        self._dialogue.order(
+            "set_point", frequency_hz=frequency_hz, level_vrms=level_vrms * self._display_ratio
+        )
 
     def switch_on(self) -> None:
         """Switch the output on."""
@@ -70,7 +94,10 @@ class Source:
         self._dialogue.recover()
 
     def close(self) -> None:
-        """Close the link, the output off: nobody watches the source after that."""
+        """Close the link, the output off: nobody watches the source after that; twice is quiet."""
+        if self._closed:
+            return
+        self._closed = True
         try:
             if not self._dialogue.wire.dirty:
                 self.switch_off()

@@ -13,7 +13,7 @@ from benchlog.bench.driver_read import read_driver
 from benchlog.bench.faces import ClockFace
 from benchlog.bench.link import open_link
 from benchlog.bench.reply import parse_identity
-from benchlog.bench.roles import Meter, Source
+from benchlog.bench.roles import Meter, Source, display_ratio
 from benchlog.bench.setup_file import AttenuatorTable, BenchTables, MeterTable, SourceTable
 from benchlog.bench.wire import Wire
 from benchlog.errors import BenchFileError, IdentityError, QuantityError
@@ -66,10 +66,12 @@ class BenchSetup:
         text: The file as it was read.
         name, mains_hz: What the file says.
         logbook: Where sweeps are kept, relative paths counted from the bench file.
-        max_level_vrms: Ceiling for the level set at the source.
+        max_level_vrms: Ceiling for the open-circuit level of the source.
         source, output_meter, input_meter: The instruments.
         source_ohm: Output resistance of the source.
-        load_ohm: What the source's display is to count with; infinity is high impedance.
+        load_ohm: What the source's display is to count with; infinity is high impedance, None
+            where the driver cannot set it.
+        attenuator: Between source and board.
     """
 
     text: str
@@ -89,9 +91,15 @@ class BenchSetup:
         present = (self.source, self.input_meter, self.output_meter)
         return tuple(place for place in present if place is not None)
 
+    @property
+    def display_ratio(self) -> float:
+        """What the source's display shows over its open-circuit level."""
+        return display_ratio(load_ohm=self.load_ohm, source_ohm=self.source_ohm)
+
     def limits(self) -> BenchLimits:
         """Return what a schedule is held against."""
-        low, high = self.source.driver.level_range_vrms or (0.0, math.inf)
+        displayed = self.source.driver.level_range_vrms or (0.0, math.inf)
+        low, high = (level / self.display_ratio for level in displayed)
         return BenchLimits(
             bands=tuple(
                 Band(
@@ -166,10 +174,11 @@ class Bench:
         return tuple(used)
 
     def close(self) -> None:
-        """Close all links, the source last; twice is quiet."""
-        for role in (self.output_meter, self.input_meter, self.source):
-            if role is not None:
-                role.close()
+        """Close all links, the source last and whatever happens; twice is quiet."""
+        with ExitStack() as closing:
+            for role in (self.source, self.input_meter, self.output_meter):
+                if role is not None:
+                    closing.callback(role.close)
 
 
 def read_bench(path: str | Path) -> BenchSetup:
@@ -219,7 +228,12 @@ def open_bench(
     input_place = setup.input_meter
     return Bench(
         setup,
-        source=Source(wires[setup.source.role], setup.source.driver, load_ohm=setup.load_ohm),
+        source=Source(
+            wires[setup.source.role],
+            setup.source.driver,
+            load_ohm=setup.load_ohm,
+            display_ratio=setup.display_ratio,
+        ),
         output_meter=Meter(
             wires[setup.output_meter.role], setup.output_meter.driver, role=setup.output_meter.role
         ),
@@ -249,6 +263,8 @@ def _opened(opener: Callable[[Place], Wire], place: Place, opened: ExitStack) ->
 
 def _setup(file: BenchTables, text: str, *, folder: Path) -> BenchSetup:
     source = file.source
+    _check_addresses(file)
+    source_place = _place(source, "source", wanted="source", folder=folder)
     return BenchSetup(
         text=text,
         name=file.name,
@@ -257,13 +273,13 @@ def _setup(file: BenchTables, text: str, *, folder: Path) -> BenchSetup:
         max_level_vrms=None
         if file.max_level is None
         else level_vrms(file.max_level, field="max_level"),
-        source=_place(source, "source", wanted="source", folder=folder),
+        source=source_place,
         output_meter=_place(file.output_meter, "output meter", wanted="meter", folder=folder),
         input_meter=None
         if file.input_meter is None
         else _place(file.input_meter, "input meter", wanted="meter", folder=folder),
         source_ohm=ohm(source.impedance, field="source.impedance", zero_ok=True),
-        load_ohm=_load_ohm(source),
+        load_ohm=_load_ohm(source, source_place.driver),
         attenuator=_attenuator(source),
     )
 
@@ -277,14 +293,6 @@ def _place(table: SourceTable | MeterTable, role: Role, *, wanted: str, folder: 
             where=f"{key}.driver",
             expected=f"a driver for a {wanted}",
         )
-    if isinstance(table, SourceTable) and table.load:
-        wants = "set_high_impedance" if table.load == HIGH_IMPEDANCE else "set_load"
-        if wants not in driver.messages:
-            raise BenchFileError(
-                f"the driver {table.driver!r} cannot set this load",
-                where=f"{key}.load",
-                expected=f"no load, or a driver with a {wants} message",
-            )
     due = table.calibration_due
     return Place(
         role=role,
@@ -295,10 +303,39 @@ def _place(table: SourceTable | MeterTable, role: Role, *, wanted: str, folder: 
     )
 
 
-def _load_ohm(source: SourceTable) -> float | None:
-    if source.load is None:
-        return None
-    return math.inf if source.load == HIGH_IMPEDANCE else ohm(source.load, field="source.load")
+def _load_ohm(source: SourceTable, driver: Driver) -> float | None:
+    """Return what the display is to count with: high impedance where nothing else is said."""
+    high = source.load in {None, HIGH_IMPEDANCE}
+    wants = "set_high_impedance" if high else "set_load"
+    if wants not in driver.messages:
+        if source.load is None:
+            return None
+        raise BenchFileError(
+            f"the driver {source.driver!r} cannot set this load",
+            where="source.load",
+            expected=f"no load, or a driver with a {wants} message",
+        )
+    return math.inf if high else ohm(str(source.load), field="source.load")
+
+
+def _check_addresses(file: BenchTables) -> None:
+    """Refuse two instruments at one address: their answers would be mixed up."""
+    seen: dict[str, str] = {}
+    tables = (
+        ("source", file.source),
+        ("output_meter", file.output_meter),
+        ("input_meter", file.input_meter),
+    )
+    for key, table in tables:
+        if table is None:
+            continue
+        other = seen.setdefault(table.address.casefold(), key)
+        if other != key:
+            raise BenchFileError(
+                f"{key} and {other} have the same address",
+                where=f"{key}.address",
+                expected="one address for each instrument",
+            )
 
 
 def _attenuator(source: SourceTable) -> Attenuator:

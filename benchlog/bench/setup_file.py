@@ -48,7 +48,11 @@ class SourceTable(_Table, frozen=True, kw_only=True):
     impedance: Annotated[Quantity, Meta(description="a resistance", examples=["50 ohm"])] = "50 ohm"
     load: (
         Annotated[
-            Quantity, Meta(description="what the display counts with", examples=["high impedance"])
+            Quantity,
+            Meta(
+                description="what the display counts with, high impedance where nothing is said",
+                examples=["high impedance"],
+            ),
         ]
         | None
     ) = None
@@ -78,7 +82,7 @@ class BenchTables(_Table, frozen=True, kw_only=True):
     max_level: (
         Annotated[
             Quantity,
-            Meta(description="the highest level to set the source to", examples=["2 Vpp"]),
+            Meta(description="the highest open-circuit level of the source", examples=["2 Vpp"]),
         ]
         | None
     ) = None

@@ -8,7 +8,7 @@ from benchlog.design.example import EXAMPLE_DESIGN
 from tests.cli.conftest import Run
 
 BENCH = 'name = "b"\n[source]\ndriver = "source_generic"\naddress = "{address}"\n'
-METER = '[output_meter]\ndriver = "meter_generic"\naddress = "TCPIP::127.0.0.1::9::SOCKET"\n'
+METER = '[output_meter]\ndriver = "meter_generic"\naddress = "TCPIP::127.0.0.1::11::SOCKET"\n'
 GOOD = BENCH.format(address="TCPIP::127.0.0.1::9::SOCKET") + METER
 
 # name of the case: files to write, arguments, exit code, words that must be in the message

@@ -13,7 +13,7 @@ from benchlog.records import Point
 from benchlog.sweep.schedule import log_spaced, spaced_schedule
 from tests.fakes.practice_bench import NOMINAL, bench_over_tcp, faults_at, perfect_world
 
-SCHEDULE = spaced_schedule(log_spaced(2e4, 2e6, 2), 0.007)
+SCHEDULE = spaced_schedule(log_spaced(2e4, 2e6, 2), 0.014)
 TIMEOUT_S = 0.08
 GAINS = np.abs(NOMINAL.gain(np.array([step.frequency_hz for step in SCHEDULE.steps])))
 
