@@ -128,6 +128,8 @@ def _unit(kind: Kind, name: str, told: str, *, asked: Mapping[str, str], house: 
     found = _HOUSE.match(name)
     if not given and found:
         given = found[2]
+    if kind == "frequency" and name.lower().startswith("log"):
+        given = "log10(Hz)"
     if not given and kind == "gain" and house and name.lower() == "gain":
         # This program's own names say it: gain is V/V.
         given = "V/V"
