@@ -71,6 +71,21 @@ _SENTENCES: dict[Fault, tuple[str, str]] = {
         "No delay makes the phase that of a board with this magnitude, so the phase was left out:"
         " look at the probes, the channels and the meter's settling.",
     ),
+    Fault.SLOPE_NOT_FIRST_ORDER: (
+        "slope not first order",
+        "Between 2 and 5 corners the gain does not fall by 20 dB a decade, where GBW is defined:"
+        " something beside the amplifier's one pole shapes the curve.",
+    ),
+    Fault.NOISE_FLOOR: (
+        "noise floor reached",
+        "Towards {highest} the gain stops falling: what is read there is noise or crosstalk."
+        " End the sweep earlier, or raise the level.",
+    ),
+    Fault.NOT_DETERMINED: (
+        "parameter not determined",
+        "The points say nothing about one of the parameters of the shape {shape}: it could be"
+        " anywhere.",
+    ),
     Fault.GBW_NEEDS_DESIGN: (
         "GBW needs a design",
         "Without a design a response of the shape {shape} has no gain-bandwidth product.",

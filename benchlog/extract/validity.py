@@ -19,6 +19,18 @@ _MEANINGLESS_REL = 3e-4
 _POOR_PROBABILITY = 1e-5
 _POOR_SIGMAS = 4.5
 
+# GBW is defined where the gain falls by 20 dB a decade; 2 dB of that may be missing (common
+# practice), which is a tenth of the slope in logarithms.
+SLOPE_BAND = (2.0, 5.0)
+_SLOPE_ROOM = 0.1
+_CERTAIN_SIGMAS = 2.0
+_ONE_CORNER = 2
+# The last points lie above the fitted curve, more and more: by a fifth at the end.
+_FLOOR_POINTS = 4
+_FLOOR_RISE = 0.2
+# A parameter that is uncertain by a factor e is not known.
+_MOST_U = 1.0
+
 # Corners closer together than this leave no gain within 3 dB of the asymptotic plateau, for two
 # first-order edges: (1 + sqrt 2)^2 is needed between the poles, 2.41 between the crossings.
 NO_BAND_RATIO = 2.41
@@ -55,6 +67,9 @@ class Fault(enum.IntFlag):
     NO_BAND = 4096
     GBW_NEEDS_DESIGN = 8192
     PHASE_DISAGREES = 16384
+    SLOPE_NOT_FIRST_ORDER = 32768
+    NOISE_FLOOR = 65536
+    NOT_DETERMINED = 131072
 
 
 FIGURES_TAKEN: dict[Fault, tuple[str, ...]] = {
@@ -73,6 +88,9 @@ FIGURES_TAKEN: dict[Fault, tuple[str, ...]] = {
     Fault.NO_BAND: _ALL,
     Fault.GBW_NEEDS_DESIGN: ("gbw_hz",),
     Fault.PHASE_DISAGREES: (),
+    Fault.SLOPE_NOT_FIRST_ORDER: ("gbw_hz",),
+    Fault.NOISE_FLOOR: _OF_CORNER,
+    Fault.NOT_DETERMINED: _ALL,
 }
 
 
@@ -101,12 +119,17 @@ def faults_of(
     past = (counts & (ln_frequency >= ln_upper[:, None])).sum(axis=1)
     few = fit.count < FEWEST_POINTS
     above = ln_upper > highest
+    variance = np.ones_like(fit.chi2) if stated else fit.chi2 / np.maximum(fit.count - 2, 1)
+    x = ln_frequency - ln_upper[:, None]
     rows = [
         (Fault.TOO_FEW_POINTS, few),
         (Fault.NOT_CONVERGED, ~few & ~above & ~fit.converged),
         (Fault.POOR_FIT, ~few & poor(fit, ln_frequency, weight, stated=stated)),
         (Fault.CORNER_ABOVE_SWEEP, ~few & above),
         (Fault.FEW_PAST_CORNER, ~few & ~above & (past < FEWEST_PAST_CORNER)),
+        (Fault.SLOPE_NOT_FIRST_ORDER, ~few & ~above & _bent(fit, x, weight, stated=stated)),
+        (Fault.NOISE_FLOOR, ~few & ~above & _flattens(fit, x, weight)),
+        (Fault.NOT_DETERMINED, ~few & ~above & ~_determined(fit, variance)),
     ]
     if ln_lower is None:
         falling = ln_upper - lowest < np.log(PLATEAU_BELOW_CORNER)
@@ -117,6 +140,45 @@ def faults_of(
     for fault, where in rows:
         faults |= np.where(where, int(fault), 0)
     return faults
+
+
+def _bent(
+    fit: Fit, ln_over_corner: FloatArray, weight: FloatArray, *, stated: bool
+) -> npt.NDArray[np.bool_]:
+    """Tell a slope between 2 and 5 corners that is not the one a single corner gives.
+
+    The slope of the residuals there is the measured slope less the fitted one; how certain it is,
+    the scatter about it tells.
+    """
+    if fit.parameters.shape[1] != _ONE_CORNER:
+        return np.zeros(len(weight), np.bool_)
+    low, high = np.log(SLOPE_BAND)
+    w = np.where((ln_over_corner >= low) & (ln_over_corner <= high), weight, 0.0)
+    count, total = (w > 0).sum(axis=1), np.maximum(w.sum(axis=1), 1e-300)
+    x = ln_over_corner - ((w * ln_over_corner).sum(axis=1) / total)[:, None]
+    y = fit.residuals - ((w * fit.residuals).sum(axis=1) / total)[:, None]
+    spread = np.maximum((w * x**2).sum(axis=1), 1e-300)
+    slope = (w * x * y).sum(axis=1) / spread
+    about = (w * (y - slope[:, None] * x) ** 2).sum(axis=1)
+    variance = np.ones_like(about) if stated else about / np.maximum(count - 2, 1)
+    certain = np.abs(slope) - _CERTAIN_SIGMAS * np.sqrt(variance / spread) > _SLOPE_ROOM
+    return np.asarray(certain & (count > FEWEST_PAST_CORNER), dtype=np.bool_)
+
+
+def _flattens(fit: Fit, ln_over_corner: FloatArray, weight: FloatArray) -> npt.NDArray[np.bool_]:
+    """Tell a high end where the gain stops falling while the fitted curve goes on."""
+    order = np.argsort(np.where(weight > 0, ln_over_corner, -np.inf), axis=1)[:, -_FLOOR_POINTS:]
+    last = np.take_along_axis(fit.residuals, order, axis=1)
+    beyond = np.take_along_axis(ln_over_corner, order, axis=1)[:, 0] > np.log(SLOPE_BAND[0])
+    rising = np.all(np.diff(last, axis=1) > 0, axis=1) & (last[:, -1] > _FLOOR_RISE)
+    return np.asarray(beyond & rising & (last[:, 0] > 0), dtype=np.bool_)
+
+
+def _determined(fit: Fit, variance: FloatArray) -> npt.NDArray[np.bool_]:
+    """Tell fits whose points say something about every parameter."""
+    with np.errstate(invalid="ignore"):
+        u = np.sqrt(np.einsum("spp->sp", fit.inverse_normal) * variance[:, None])
+    return np.asarray((u < _MOST_U).all(axis=1), dtype=np.bool_)
 
 
 def _of_band(
