@@ -93,6 +93,9 @@ def choose(data: Data, design: Design | None, *, shape: str) -> Choice:
     simple = _decided(tuple(Composed(upper) for upper in uppers), data)
     if not _all_poor(simple).any():
         return simple
+    if design is None:
+        # Two equal poles are two poles with a Q of a half; more of them nothing else explains.
+        uppers += [EqualPoles(3), EqualPoles(4)]
     edges: tuple[Edge | None, ...] = (None, HighPass(), Shelf())
     shapes = [Composed(upper, edge) for edge in edges for upper in uppers]
     shapes.sort(key=lambda one: len(one.parameters))

@@ -56,3 +56,20 @@ def test_parameter_that_nothing_tells_is_named() -> None:
     found = codes(one_pole(noise=1e-5), shape="two-pole")
 
     assert found & {"parameter not determined", "fit did not converge"}
+
+
+@pytest.mark.parametrize("count", [3, 4])
+def test_equal_poles_are_found_without_a_design(count: int) -> None:
+    """Gain and corner come out; there is no GBW, and the reason says why."""
+    random = np.random.default_rng(5)
+    noise = np.exp(1e-3 * random.standard_normal(FREQUENCY_HZ.size))
+    gain = 1000.0 * np.hypot(1.0, FREQUENCY_HZ / 1e5) ** -count * noise
+    corner_hz = 1e5 * np.sqrt(2 ** (1 / count) - 1)
+
+    figures = extract(GainCurve(FREQUENCY_HZ, gain))
+
+    assert figures.shape == f"{count}-equal-poles"
+    assert figures.corner_hz is not None
+    assert figures.corner_hz.value == pytest.approx(corner_hz, rel=3e-3)
+    assert figures.gbw_hz is None
+    assert "GBW needs a design" in {reason.code for reason in figures.validity}
