@@ -9,7 +9,30 @@ from benchlog.bench.message import NumberFormat, ReplyKind
 
 Text = Annotated[str, Meta(max_length=200)]
 Quantity = Annotated[str, Meta(max_length=40)]
-Pair = Annotated[list[Quantity], Meta(min_length=2, max_length=2)]
+Band = Annotated[
+    list[Quantity],
+    Meta(
+        min_length=2,
+        max_length=2,
+        description="the lowest and the highest frequency",
+        examples=[["10 Hz", "10 MHz"]],
+    ),
+]
+Levels = Annotated[
+    list[Quantity],
+    Meta(
+        min_length=2,
+        max_length=2,
+        description="the lowest and the highest level",
+        examples=[["1 mVrms", "7 Vrms"]],
+    ),
+]
+Lines = Annotated[
+    list[str],
+    Meta(min_length=1, max_length=20, description="lines to send", examples=[["READ?"]]),
+]
+Cycles = Annotated[float, Meta(ge=0, le=1000, description="periods, from 0 to 1000", examples=[3])]
+Time = Annotated[Quantity, Meta(description="a time", examples=["20 ms"])]
 
 
 class _Table(msgspec.Struct, forbid_unknown_fields=True, frozen=True, kw_only=True):
@@ -21,24 +44,26 @@ class LinkTable(_Table, frozen=True, kw_only=True):
 
     read_terminator: Literal["\n", "\r\n", "\r"] = "\n"
     write_terminator: Literal["\n", "\r\n", "\r"] = "\n"
-    timeout: Quantity = "2 s"
-    gap: Quantity = "0 s"
-    after_open: Quantity = "0 s"
+    timeout: Time = "2 s"
+    gap: Time = "0 s"
+    after_open: Time = "0 s"
 
 
 class NumbersTable(_Table, frozen=True, kw_only=True):
     """How the instrument wants its numbers."""
 
     style: NumberFormat = "plain"
-    digits: Annotated[int, Meta(ge=4, le=15)] = 9
+    digits: Annotated[
+        int, Meta(ge=4, le=15, description="significant digits, from 4 to 15", examples=[9])
+    ] = 9
 
 
 class MessageTable(_Table, frozen=True, kw_only=True):
     """What is sent for one action."""
 
-    lines: Annotated[list[str], Meta(min_length=1, max_length=20)]
+    lines: Lines
     reply: ReplyKind = "none"
-    timeout: Quantity | None = None
+    timeout: Time | None = None
     unit: Text = ""
     overload: list[Text] = []
     not_a_number: list[Text] = []
@@ -47,30 +72,30 @@ class MessageTable(_Table, frozen=True, kw_only=True):
 class RangeTable(_Table, frozen=True, kw_only=True):
     """What the instrument can do."""
 
-    frequency: Pair
-    level: Pair | None = None
+    frequency: Band
+    level: Levels | None = None
 
 
 class SettlingTable(_Table, frozen=True, kw_only=True):
     """How long it takes to settle from this frequency up: a fixed time and some cycles."""
 
     above: Quantity = "0.001 Hz"
-    time: Quantity
-    cycles: Annotated[float, Meta(ge=0, le=1000)] = 0.0
+    time: Time
+    cycles: Cycles = 0.0
 
 
 class ReadingTable(_Table, frozen=True, kw_only=True):
     """How long one reading takes."""
 
-    time: Quantity = "20 ms"
-    cycles: Annotated[float, Meta(ge=0, le=1000)] = 0.0
+    time: Time = "20 ms"
+    cycles: Cycles = 0.0
 
 
 class AccuracyTable(_Table, frozen=True, kw_only=True):
     """Limits of error in a band, in percent of the reading, taken as rectangular."""
 
-    band: Pair
-    reading: Quantity
+    band: Band
+    reading: Annotated[Quantity, Meta(description="a limit of error", examples=["0.1%"])]
 
 
 class ExampleTable(_Table, frozen=True, kw_only=True):
