@@ -17,6 +17,7 @@ from benchlog.cli.params import (
     people_options,
 )
 from benchlog.cli.place import DESIGN, logbook_path, read_folder_design
+from benchlog.cli.progress import ReadProgress
 
 if TYPE_CHECKING:
     from benchlog.capture.read import Told
@@ -220,6 +221,7 @@ def _told(
             **dict(_pair(text, "--column", "input=CH1") for text in columns),
         },
         frequency_hz=frequency_hz,
+        progress=ReadProgress(),
     )
 
 

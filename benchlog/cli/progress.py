@@ -89,3 +89,19 @@ def _left(progress: "Progress") -> str:
     if seconds >= 60:
         return f"about {time.strftime('%M:%S', time.gmtime(seconds))} left"
     return f"about {seconds:.0f} s left"
+
+
+class ReadProgress:
+    """A line that tells how much of a large file was read, where stderr is a terminal."""
+
+    def __init__(self) -> None:
+        self._shown = -1
+
+    def __call__(self, part: float) -> None:
+        """Show the part, 0 to 1; each whole per cent once."""
+        percent = int(100 * part)
+        if percent == self._shown or not sys.stderr.isatty():
+            return
+        self._shown = percent
+        end = "\n" if percent == 100 else ""
+        click.echo(f"\rreading {percent:3d} %{end}", nl=False, err=True)

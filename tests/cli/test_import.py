@@ -77,3 +77,67 @@ def test_without_a_design_there_are_figures_but_no_verdict(run: Run, tmp_path: P
     assert board["verdict"] is None
     assert board["design"] is None
     assert board["figures"]["gbw_hz"]["basis"] == "signal gain"
+
+
+def test_folder_of_records_is_one_sweep(run: Run, tmp_path: Path) -> None:
+    """From a folder to a verdict with one command; originals are kept, and can be declined."""
+    samples = Path(__file__).parents[2] / "sample_data"
+    design, board = samples / "line_preamp.toml", samples / "captures" / "board_0042"
+
+    ran = run("-C", tmp_path, "import", board, "--serial", "0042", "--design", design, "--json")
+
+    (sweep,) = ran.data
+    assert ran.code == 0
+    assert sweep["verdict"]["overall"] == "pass"
+    assert sweep["figures"]["corner_hz"]["value"] == pytest.approx(62.5e3, rel=1e-4)
+    assert len(list((tmp_path / "captures").iterdir())) == 10
+    again = run("-C", tmp_path, "import", board, "--serial", "0042", "--design", design)
+    assert again.code == 1
+    assert "is in the logbook already" in again.err
+
+
+def test_batch_takes_serials_from_names(run: Run, home: Path) -> None:
+    """Each board its own sweep; the pattern is checked, and a preview keeps nothing."""
+    batch = home / "batch"
+    batch.mkdir()
+    for serial, end in (("0012", ""), ("1E05", "\n")):
+        (batch / f"x_{serial}.csv").write_text(example_capture() + end, encoding="utf-8")
+
+    shown = run("-C", home, "import", batch, "--serial-from-name", "x_{serial}.csv", "--preview")
+    kept = run("-C", home, "import", batch, "--serial-from-name", "x_{serial}.csv", "--json")
+
+    assert "serial       0012" in shown.out
+    assert [board["serial"] for board in kept.data] == ["0012", "1E05"]
+    wrong = run("-C", home, "import", batch, "--serial-from-name", "y_{serial}.csv")
+    assert wrong.code == 1
+    assert "does not fit the pattern" in wrong.err
+
+
+def test_layout_is_kept_and_used(run: Run, home: Path) -> None:
+    """What was said once need not be said again; originals stay out when told."""
+    rows = "\n".join(f"{10 ** (2 + i / 10):.6g};{48 - i / 100:.3f}" for i in range(30))
+    (home / "plain.csv").write_text(f"Frequency (Hz);Gain\n{rows}\n")
+    said = ("--unit", "gain=V/V", "--save-layout", "lab", "--no-original")
+
+    first = run("-C", home, "import", home / "plain.csv", "--serial", "1", *said)
+    second = run("-C", home, "import", home / "plain.csv", "--serial", "1", "--layout", "lab",
+                 "--again", "--no-original")  # fmt: skip
+
+    assert first.code == second.code == 4
+    assert not (home / "captures").exists()
+
+
+def test_terminal_is_asked_before_anything_is_kept(
+    run: Run, home: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Preview, serial, keep it? No keeps nothing."""
+    answers = iter(["0006", "n"])
+    monkeypatch.setattr("sys.stdin.isatty", lambda: True, raising=False)
+    monkeypatch.setattr("click.termui.visible_prompt_func", lambda _: next(answers))
+
+    ran = run("-C", home, "import", home / "capture.csv")
+
+    assert ran.code == 130
+    assert "not given yet" in ran.out
+    with Logbook(home / "logbook.db", read_only=True) as logbook:
+        assert logbook.info().sweeps == 0
