@@ -153,7 +153,7 @@ class _Complaint(Generic[S]):
                 where=spoken((*steps, name)),
                 expected=self._wanted((*steps, name)),
             )
-        if what.startswith("Invalid"):
+        if what.startswith("Invalid") and self._words(steps):
             return self._unknown_word(name, steps)
         told = _told(_value_at(steps, self.data))
         limit = what.removeprefix("Expected ").split(", got")[0]
