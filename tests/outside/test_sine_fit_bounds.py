@@ -8,6 +8,7 @@ Source:
 
 import numpy as np
 import pytest
+from scipy.optimize import curve_fit
 
 from benchlog.capture.sinefit import fit_common, fit_known
 from benchlog.curve import FloatArray
@@ -103,3 +104,51 @@ def test_spectrum_finds_the_line(cycles: float) -> None:
 
     assert abs(fit.frequency_hz - cycles / 2.0) < 5 * fit.u_frequency_hz
     assert abs(fit.amplitude[0] - 1.0) < 5 * fit.u_amplitude[0]
+
+
+@pytest.mark.parametrize("snr_db", [40.0, 60.0])
+def test_bias_and_scatter_at_a_broken_number_of_cycles(snr_db: float) -> None:
+    """5.3 cycles in 64 samples, 600 records: no bias beyond its own noise, scatter at the bound."""
+    sigma = 10 ** (-snr_db / 20) / np.sqrt(2)
+    time_s = np.arange(64, dtype=np.float64)
+    clean = np.cos(2 * np.pi * 5.3 / 64 * time_s + PHASE_RAD)
+    random = np.random.default_rng(int(snr_db))
+    fits = [
+        fit_common(time_s, (clean + sigma * random.standard_normal(64))[None, :])
+        for _ in range(600)
+    ]
+    found = np.array(
+        [[fit.amplitude[0], fit.phase_rad[0], 2 * np.pi * fit.frequency_hz] for fit in fits]
+    )
+    exact = fisher(64, 5.3, amplitude=1.0, sigma=sigma)[[0, 1, 3]]
+    truth = np.array([1.0, PHASE_RAD, 2 * np.pi * 5.3 / 64])
+
+    assert np.all(np.abs(found.mean(axis=0) - truth) < 4 * exact / np.sqrt(600))
+    assert found.std(axis=0) / exact == pytest.approx([1, 1, 1], abs=0.1)
+
+
+def test_same_answer_from_general_libraries() -> None:
+    """Numpy's least squares at the known frequency, scipy's curve_fit at the unknown one."""
+    time_s = np.linspace(0.0, 1e-3, 500)
+    random = np.random.default_rng(8)
+    angle = 2 * np.pi * 7.3e3 * time_s
+    samples = 0.5 * np.cos(angle - 0.4) + 0.1 + 1e-3 * random.standard_normal(500)
+
+    basis = np.stack([np.cos(angle), np.sin(angle), np.ones(500)], axis=1)
+    (cosine, sine, offset), *_ = np.linalg.lstsq(basis, samples, rcond=None)
+    three = fit_known(time_s, samples[None, :], 7.3e3)
+    assert three.amplitude[0] == pytest.approx(np.hypot(cosine, sine), rel=1e-12)
+    assert three.phase_rad[0] == pytest.approx(np.arctan2(-sine, cosine), rel=1e-10)
+    assert three.offset[0] == pytest.approx(offset, rel=1e-10)
+
+    def model(t: FloatArray, *p: float) -> FloatArray:
+        return np.asarray(p[0] * np.cos(2 * np.pi * p[1] * 1e3 * t + p[2]) + p[3])
+
+    found, covariance = curve_fit(model, time_s, samples, p0=[0.5, 7.3, -0.4, 0.1])
+    four = fit_common(time_s, samples[None, :])
+    u = np.sqrt(np.diag(covariance))
+    assert four.amplitude[0] == pytest.approx(found[0], rel=1e-6)
+    assert four.frequency_hz == pytest.approx(1e3 * found[1], rel=1e-7)
+    assert four.u_amplitude[0] == pytest.approx(u[0], rel=1e-3)
+    assert four.u_phase_rad[0] == pytest.approx(u[2], rel=1e-3)
+    assert four.u_frequency_hz == pytest.approx(1e3 * u[1], rel=1e-3)
