@@ -20,6 +20,9 @@ LOWEST_START_HZ = 10.0
 # 30 times the corner is where one pole has fallen by 29.5 dB and a second pole shows.
 STOP_OVER_CORNER = 30.0
 STOP_WITHOUT_CORNER_HZ = 1e6
+# One pole is down to a thirtieth at 30 corners; more poles get there earlier, and below it a
+# meter reads its own noise.
+LEAST_GAIN = 1 / 30.1
 # A lower corner needs its own decade.
 LOWER_CORNER_OVER_START = 10.0
 # Common practice for small-signal response: at most 100 mV peak to peak at the output.
@@ -66,7 +69,7 @@ def schedule_for(
     asked = _asked(design, override or Override())
     chain = design.chain()
     nominal = nominal_figures(chain)
-    start_hz, stop_hz, notes = _span(asked, nominal, limits)
+    start_hz, stop_hz, notes = _span(asked, chain, nominal, limits=limits)
     frequencies_hz = log_spaced(start_hz, stop_hz, asked.per_decade or PER_DECADE)
     levels_vrms = [_level_vrms(design, asked, nominal, at_hz=f) for f in frequencies_hz]
     if asked.level_vrms is None and design.drive_level_vrms is None:
@@ -124,7 +127,7 @@ def _asked(design: Design, override: Override) -> Override:
 
 
 def _span(
-    asked: Override, nominal: Nominal, limits: BenchLimits
+    asked: Override, chain: Chain, nominal: Nominal, *, limits: BenchLimits
 ) -> tuple[float, float, tuple[str, ...]]:
     """Return start, stop and notes; an end that was asked for stays where it is."""
     low_hz = max((band.low_hz for band in limits.bands), default=0.0)
@@ -144,7 +147,7 @@ def _span(
         if start_hz > wanted_hz:
             notes.append(_moved("starts", start_hz, wanted_hz, why="no instrument reaches lower"))
     if stop_hz is None:
-        wanted_hz = rounded_hz(_natural_stop_hz(nominal), 2)
+        wanted_hz = rounded_hz(_natural_stop_hz(chain, nominal), 2)
         stop_hz = min(wanted_hz, high_hz)
         if stop_hz < wanted_hz:
             notes.append(
@@ -160,10 +163,17 @@ def _natural_start_hz(nominal: Nominal) -> float:
     return start_hz
 
 
-def _natural_stop_hz(nominal: Nominal) -> float:
+def _natural_stop_hz(chain: Chain, nominal: Nominal) -> float:
+    """Return 30 times the corner, or less where several poles leave too little to read there."""
+    import numpy as np
+
     if nominal.corner_hz is None:
         return STOP_WITHOUT_CORNER_HZ
-    return STOP_OVER_CORNER * nominal.corner_hz
+    stop_hz = STOP_OVER_CORNER * nominal.corner_hz
+    count = 200
+    grid_hz = [nominal.corner_hz * STOP_OVER_CORNER ** (n / count) for n in range(count)]
+    gains = np.abs(chain.response(np.array(grid_hz))) / nominal.gain
+    return next((f for f, gain in zip(grid_hz, gains, strict=True) if gain < LEAST_GAIN), stop_hz)
 
 
 def _moved(verb: str, to_hz: float, wanted_hz: float, *, why: str) -> str:
