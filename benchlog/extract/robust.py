@@ -23,11 +23,43 @@ def worst_point(
 ) -> tuple[npt.NDArray[np.int64], npt.NDArray[np.bool_]]:
     """Return the place of each sweep's most outlying point, and whether it is wild.
 
+    Only sweeps where the largest residual leaves room for a wild point are looked at closely.
+
     Args:
         fit: Of the sweeps.
         weight: As fitted, shape (sweeps, points).
         stated: Whether the weights are inverse variances.
     """
+    place = np.zeros(len(weight), np.int64)
+    wild = np.zeros(len(weight), np.bool_)
+    rows = np.flatnonzero(_room_for_wild(fit, weight))
+    if rows.size:
+        place[rows], wild[rows] = _worst(fit.rows(rows), weight[rows], stated=stated)
+    return place, wild
+
+
+def _room_for_wild(fit: Fit, weight: FloatArray) -> npt.NDArray[np.bool_]:
+    """Tell sweeps that can have a wild point, by bounds that need no leverage of each point."""
+    size = fit.derivatives.shape[2]
+    with np.errstate(all="ignore"):
+        steepest = np.stack(
+            [np.abs(fit.derivatives[:, :, one]).max(axis=1, initial=0.0) for one in range(size)],
+            axis=1,
+        )
+        leverage = weight.max(axis=1, initial=0.0) * np.einsum(
+            "sp,spq,sq->s", steepest, np.abs(fit.inverse_normal), steepest
+        )
+        largest = (weight * fit.residuals**2).max(axis=1, initial=0.0) / (1.0 - leverage)
+        dof = np.maximum(fit.count - size - 1, 1)
+        # For stated noise the scatter of the others counts as 1 at least: fewer are wild.
+        low = largest <= _WILD**2 * np.maximum(fit.chi2 - largest, 0.0) / dof
+        room: npt.NDArray[np.bool_] = ~(low & (leverage < 1.0))
+    return room
+
+
+def _worst(
+    fit: Fit, weight: FloatArray, *, stated: bool
+) -> tuple[npt.NDArray[np.int64], npt.NDArray[np.bool_]]:
     with np.errstate(all="ignore"):
         spread = fit.derivatives @ fit.inverse_normal
         leverage = weight * (spread * fit.derivatives).sum(axis=2)

@@ -10,7 +10,7 @@ import numpy as np
 import numpy.typing as npt
 
 from benchlog.curve import FloatArray
-from benchlog.extract.models.shape import Shape
+from benchlog.extract.models.shape import ClosedForm, Shape
 
 _MOST_STEPS = 60
 # Parameters are logarithms: this is a relative change far below any uncertainty.
@@ -23,8 +23,15 @@ _NOTHING = 1e-26
 _LONGEST_STEP = 1.0
 _FIRST_DAMPING = 1e-3
 _LEAST_DAMPING = 1e-12
+# What a last step may leave over, in standard deviations, and its length.
+_LEFT_OVER = 1e-4
+_SHORT_STEP = 1e-2
+_CLOSED_FORM = 2
 # Of the normal matrix with a diagonal of one; below it an inverse has no digits left.
 _LEAST_EIGENVALUE = 1e-13
+
+_Bools = npt.NDArray[np.bool_]
+_Rows = slice | npt.NDArray[np.int64]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -65,15 +72,18 @@ class Fit:
 
     def row(self, place: int) -> "Fit":
         """Return the fit of one sweep."""
-        one = slice(place, place + 1)
+        return self.rows(slice(place, place + 1))
+
+    def rows(self, some: _Rows) -> "Fit":
+        """Return the fits of some sweeps."""
         return Fit(
-            parameters=self.parameters[one],
-            inverse_normal=self.inverse_normal[one],
-            derivatives=self.derivatives[one],
-            residuals=self.residuals[one],
-            chi2=self.chi2[one],
-            count=self.count[one],
-            converged=self.converged[one],
+            parameters=self.parameters[some],
+            inverse_normal=self.inverse_normal[some],
+            derivatives=self.derivatives[some],
+            residuals=self.residuals[some],
+            chi2=self.chi2[some],
+            count=self.count[some],
+            converged=self.converged[some],
         )
 
 
@@ -99,11 +109,17 @@ def solve(
     Returns:
         The fits; where one did not converge the flag says so.
     """
-    used = (weight > 0).astype(float)
-    x = np.where(weight > 0, ln_frequency, 0.0)
-    y = np.where(weight > 0, ln_gain, 0.0)
-    first = shape.start(x, y, used) if start is None else start
-    state = _State(shape, x, y, weight=weight, start=first, prior=prior)
+    # A frequency row that all sweeps share stays one row, in memory too.
+    x, y = ln_frequency, ln_gain
+    counts = weight > 0
+    if not counts.all():
+        x, y = np.where(counts, x, 0.0), np.where(counts, y, 0.0)
+    near = None
+    if start is None:
+        near = shape.near(x, y, weight) if isinstance(shape, ClosedForm) else None
+        start = near if near is not None else shape.start(x, y, weight)
+    state = _State(shape, x, y, weight=weight, start=start, prior=prior)
+    state.near = near is not None
     for _ in range(_MOST_STEPS):
         if not state.step():
             break
@@ -125,37 +141,70 @@ class _State:
     ) -> None:
         self.shape, self.x, self.y, self.weight, self.prior = shape, x, y, weight, prior
         self.parameters = start.copy()
-        self.floor = _NOTHING * weight.sum(axis=1)
+        counts = weight > 0
+        self.count, self.padding = counts.sum(axis=1), None if counts.all() else ~counts
+        self.total = weight.sum(axis=1)
+        self.dof = np.maximum(self.count - start.shape[1], 1)
         self.damping = np.full(len(start), _FIRST_DAMPING)
         self.moving = np.ones(len(start), np.bool_)
-        self.residuals, self.derivatives, self.chi2 = self._at(np.arange(len(start)), start)
+        self.near = False
+        self.normal = np.zeros((len(start), start.shape[1], start.shape[1]))
+        self.residuals, self.derivatives, self.chi2 = self._at(slice(None), start)
 
     def step(self) -> bool:
         """Try one step of every sweep that still moves; False once none does."""
-        rows = np.flatnonzero(self.moving)
-        if rows.size == 0:
+        every = bool(self.moving.all())
+        rows: _Rows = slice(None) if every else np.flatnonzero(self.moving)
+        if not self.moving.any():
             return False
-        every = rows.size == len(self.parameters)
-        which: slice | npt.NDArray[np.int64] = slice(None) if every else rows
         normal, slope = _normal(
-            self.derivatives[:, which], self.weight[which], residuals=self.residuals[which]
+            self.derivatives[:, rows], self.weight[rows], residuals=self.residuals[rows]
         )
         if self.prior is not None:
             np.einsum("spp->sp", normal)[:] += self.prior.weight
             slope += self.prior.weight * (self.prior.centre[rows] - self.parameters[rows])
-        # Scaled to a diagonal of one, no parameter's size or lack of effect spoils the solution.
-        scale = np.sqrt(np.einsum("spp->sp", normal))
-        scale = np.where(scale > 0, scale, 1.0)
-        damped = normal / scale[:, :, None] / scale[:, None, :]
-        np.einsum("spp->sp", damped)[:] = 1.0 + self.damping[rows, None]
-        move = np.linalg.solve(damped, (slope / scale)[:, :, None])[:, :, 0] / scale
-        longest = np.abs(move).max(axis=1, keepdims=True)
-        move *= np.minimum(1.0, _LONGEST_STEP / np.maximum(longest, 1e-300))
-        self._judge(rows, move)
+        self.normal[rows] = normal
+        move = _damped(normal, slope, self.damping[rows])
+        last = self._is_last(rows, move, fall=(move * slope).sum(axis=1))
+        if last.all():
+            self._finish(rows, move)
+            return False
+        which = np.arange(len(self.parameters))[rows]
+        if last.any():
+            self._finish(which[last], move[last])
+        self._judge(which[~last], move[~last])
         return True
+
+    def _is_last(self, rows: _Rows, move: FloatArray, *, fall: FloatArray) -> _Bools:
+        """Tell steps after which nothing is left to do.
+
+        Near the answer a step leaves over about itself times the residuals' size and its own.
+        """
+        chi2, total = self.chi2[rows], self.total[rows]
+        low = fall <= _FALL_TOLERANCE * chi2 + _NOTHING * total
+        if self.near:
+            length = np.abs(move).max(axis=1)
+            left = np.sqrt(chi2 / np.maximum(total, 1e-300)) + length
+            variance = np.minimum(chi2 / self.dof[rows], 1.0)
+            low |= (fall * left**2 <= _LEFT_OVER**2 * variance) & (length < _SHORT_STEP)
+        return np.asarray(low & (self.damping[rows] <= _FIRST_DAMPING), dtype=np.bool_)
+
+    def _finish(self, rows: _Rows, move: FloatArray) -> None:
+        """Take a step so short that the residuals follow by their derivatives."""
+        self.parameters[rows] += move
+        residuals = self.residuals[rows]
+        for place, by in enumerate(self.derivatives):
+            residuals -= by[rows] * move[:, place : place + 1]
+        if self.padding is not None:
+            residuals[self.padding[rows]] = 0.0
+        self.residuals[rows] = residuals
+        self.chi2[rows] = self._size(rows, residuals)
+        self.moving[rows] = False
 
     def _judge(self, rows: npt.NDArray[np.int64], move: FloatArray) -> None:
         """Take the steps that go down, damp the others more."""
+        longest = np.abs(move).max(axis=1, keepdims=True)
+        move = move * np.minimum(1.0, _LONGEST_STEP / np.maximum(longest, 1e-300))
         tried = self.parameters[rows] + move
         residuals, derivatives, chi2 = self._at(rows, tried)
         before = self.chi2[rows]
@@ -172,34 +221,63 @@ class _State:
         )
         small = np.abs(move).max(axis=1) < _STEP_TOLERANCE
         # A step that neither falls nor rises is rounding at the bottom.
-        flat = np.abs(before - chi2) <= _FALL_TOLERANCE * before + self.floor[rows]
+        flat = np.abs(before - chi2) <= _FALL_TOLERANCE * before + _NOTHING * self.total[rows]
         stuck = self.damping[rows] > 1e12
         self.moving[rows[small | flat | stuck]] = False
 
-    def _at(
-        self, rows: npt.NDArray[np.int64], parameters: FloatArray
-    ) -> tuple[FloatArray, FloatArray, FloatArray]:
+    def _at(self, rows: _Rows, parameters: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
         values, derivatives = self.shape.evaluate(parameters, self.x[rows])
-        residuals = np.where(self.weight[rows] > 0, self.y[rows] - values, 0.0)
-        chi2 = np.einsum("sn,sn,sn->s", self.weight[rows], residuals, residuals)
+        residuals = self.y[rows] - values
+        if self.padding is not None:
+            residuals[self.padding[rows]] = 0.0
+        return residuals, np.moveaxis(derivatives, 2, 0), self._size(rows, residuals, parameters)
+
+    def _size(
+        self, rows: _Rows, residuals: FloatArray, parameters: FloatArray | None = None
+    ) -> FloatArray:
+        """Return the weighted sum of squares, the prior's included."""
+        chi2: FloatArray = np.einsum("sn,sn->s", self.weight[rows] * residuals, residuals)
         if self.prior is not None:
-            away = parameters - self.prior.centre[rows]
-            chi2 += (self.prior.weight * away**2).sum(axis=1)
-        return residuals, np.moveaxis(derivatives, 2, 0), chi2
+            at = self.parameters[rows] if parameters is None else parameters
+            chi2 += (self.prior.weight * (at - self.prior.centre[rows]) ** 2).sum(axis=1)
+        return chi2
 
     def fit(self) -> Fit:
-        normal, _ = _normal(self.derivatives, self.weight, residuals=self.residuals)
-        if self.prior is not None:
-            np.einsum("spp->sp", normal)[:] += self.prior.weight
         return Fit(
             parameters=self.parameters,
-            inverse_normal=_inverse(normal),
+            inverse_normal=_inverse(self.normal),
             derivatives=np.moveaxis(self.derivatives, 0, 2),
             residuals=self.residuals,
             chi2=self.chi2,
-            count=(self.weight > 0).sum(axis=1),
+            count=self.count,
             converged=~self.moving,
         )
+
+
+def _damped(normal: FloatArray, slope: FloatArray, damping: FloatArray) -> FloatArray:
+    """Return the step that a damped normal matrix gives, shape (sweeps, parameters)."""
+    # Scaled to a diagonal of one, no parameter's size or lack of effect spoils the solution.
+    scale = np.sqrt(np.einsum("spp->sp", normal))
+    scale = np.where(scale > 0, scale, 1.0)
+    damped = normal / scale[:, :, None] / scale[:, None, :]
+    np.einsum("spp->sp", damped)[:] = 1.0 + damping[:, None]
+    inverse = _adjugate(damped)
+    if inverse is None:
+        move = np.linalg.solve(damped, (slope / scale)[:, :, None])[:, :, 0]
+    else:
+        matrix, determinant = inverse
+        move = np.einsum("spq,sq->sp", matrix, slope / scale) / determinant[:, None]
+    return np.asarray(move / scale)
+
+
+def _adjugate(matrix: FloatArray) -> tuple[FloatArray, FloatArray] | None:
+    """Return adjugate and determinant of symmetric 2 x 2 matrices; None for larger ones."""
+    if matrix.shape[1] != _CLOSED_FORM:
+        return None
+    adjugate = matrix[:, ::-1, ::-1].copy()
+    adjugate[:, 0, 1] *= -1.0
+    adjugate[:, 1, 0] *= -1.0
+    return adjugate, matrix[:, 0, 0] * matrix[:, 1, 1] - matrix[:, 0, 1] ** 2
 
 
 def _normal(
@@ -224,8 +302,15 @@ def _inverse(normal: FloatArray) -> FloatArray:
     safe = np.where(scale > 0, scale, 1.0)
     scaled = normal / safe[:, :, None] / safe[:, None, :]
     scaled[~known] = np.eye(normal.shape[1])
-    known &= np.linalg.eigvalsh(scaled)[:, 0] > _LEAST_EIGENVALUE
-    scaled[~known] = np.eye(normal.shape[1])
-    inverse: FloatArray = np.linalg.inv(scaled) / safe[:, :, None] / safe[:, None, :]
-    inverse[~known] = np.inf
-    return inverse
+    closed = _adjugate(scaled)
+    if closed is None:
+        known &= np.linalg.eigvalsh(scaled)[:, 0] > _LEAST_EIGENVALUE
+        scaled[~known] = np.eye(normal.shape[1])
+        inverse = np.asarray(np.linalg.inv(scaled))
+    else:
+        # Beside a largest eigenvalue between 1 and 2, the determinant is the least one.
+        known &= closed[1] > _LEAST_EIGENVALUE
+        inverse = closed[0] / np.where(known, closed[1], 1.0)[:, None, None]
+    unscaled: FloatArray = inverse / safe[:, :, None] / safe[:, None, :]
+    unscaled[~known] = np.inf
+    return unscaled

@@ -4,8 +4,10 @@ import numpy as np
 
 from benchlog.curve import FloatArray
 from benchlog.extract.models.edge import Edge
+from benchlog.extract.models.polynomial import shared_row, weighted_polynomial
 from benchlog.extract.models.rolloff import Rolloff
 
+_FARTHEST = 300.0
 _LN_ROOT_TWO = 0.5 * np.log(2.0)
 
 
@@ -49,6 +51,36 @@ class Composed:
             lowest = np.where(within, ln_frequency, np.inf).min(axis=1)
             columns.append(np.where(np.isfinite(lowest), lowest, 0.0)[:, None])
         return np.concatenate(columns, axis=1)
+
+    def near(
+        self, ln_frequency: FloatArray, ln_gain: FloatArray, weight: FloatArray
+    ) -> FloatArray | None:
+        """Solve ``|H|^(-2/n) = c0 + c1 f^2 + ...``, linear in c; see ``ClosedForm``.
+
+        Relative residuals are the same on both sides but for their scale: what is left over is of
+        the square of the noise.
+        """
+        if self.edge is not None:
+            return None
+        root = self.rolloff.root
+        counted = np.where(weight > 0, ln_gain, -np.inf)
+        top = np.maximum(counted.max(axis=1, initial=-np.inf, keepdims=True), -_FARTHEST)
+        middle = 0.5 * (ln_frequency.max() + ln_frequency.min()) if ln_frequency.size else 0.0
+        row = shared_row(ln_frequency)
+        powers = np.exp(2.0 * (row - middle))
+        size = np.minimum(ln_gain - top, 0.0)
+        size *= 2.0 / root
+        np.exp(size, out=size)
+        solution = weighted_polynomial(size, powers, weight, degree=self.rolloff.degree)
+        with np.errstate(all="ignore"):
+            plateau = top[:, 0] - 0.5 * root * np.log(solution[:, 0])
+            ratio = solution[:, 1:] / solution[:, :1]
+            found = np.column_stack([plateau, self.rolloff.of_polynomial(ratio, middle)])
+        lost = ~np.isfinite(found).all(axis=1)
+        if lost.any():
+            x = np.broadcast_to(ln_frequency, ln_gain.shape)
+            found[lost] = self.start(x[lost], ln_gain[lost], weight[lost])
+        return found
 
     def evaluate(
         self, parameters: FloatArray, ln_frequency: FloatArray

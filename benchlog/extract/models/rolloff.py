@@ -32,6 +32,25 @@ class Rolloff(Protocol):
         """How many poles there are: the slope far above the corner."""
         ...
 
+    @property
+    def root(self) -> float:
+        """n, where ``|H|^(-2/n)`` is a polynomial in the square of frequency."""
+        ...
+
+    @property
+    def degree(self) -> int:
+        """Of that polynomial."""
+        ...
+
+    def of_polynomial(self, coefficients: FloatArray, ln_unit: float) -> FloatArray:
+        """Return the parameters for coefficients of f^2, f^4 ..., shape (sweeps, parameters).
+
+        Args:
+            coefficients: Over the constant, shape (sweeps, degree); NaN comes from bad ones.
+            ln_unit: Logarithm of what frequency is counted in.
+        """
+        ...
+
     def evaluate(
         self, parameters: FloatArray, ln_frequency: FloatArray
     ) -> tuple[FloatArray, FloatArray]:
@@ -57,7 +76,8 @@ class OnePole:
     """``|H| = 1 / sqrt(1 + (f/fc)^2)``."""
 
     name = "one-pole"
-    poles = 1
+    poles = degree = 1
+    root = 1.0
     parameters: tuple[str, ...] = ("ln_corner",)
 
     def evaluate(
@@ -74,6 +94,10 @@ class OnePole:
         """Return the phase and its derivative by ln fc."""
         x = np.sqrt(_squared(ln_frequency, parameters))
         return -np.arctan(x), (x / (1.0 + x**2))[:, :, None]
+
+    def of_polynomial(self, coefficients: FloatArray, ln_unit: float) -> FloatArray:
+        """Return the corner."""
+        return ln_unit - _HALF * np.log(coefficients)
 
     def start(self, ln_corner: FloatArray) -> FloatArray:
         """Take the corner."""
@@ -92,9 +116,11 @@ class EqualPoles:
     """
 
     parameters: tuple[str, ...] = ("ln_pole",)
+    degree = 1
 
     def __init__(self, count: int) -> None:
         self.poles = count
+        self.root = float(count)
         self.name = f"{count}-equal-poles"
         self._ln_shrinkage = _HALF * float(np.log(2.0 ** (1.0 / count) - 1.0))
 
@@ -113,6 +139,10 @@ class EqualPoles:
         x = np.sqrt(_squared(ln_frequency, parameters))
         return -self.poles * np.arctan(x), (self.poles * x / (1.0 + x**2))[:, :, None]
 
+    def of_polynomial(self, coefficients: FloatArray, ln_unit: float) -> FloatArray:
+        """Return the pole."""
+        return ln_unit - _HALF * np.log(coefficients)
+
     def start(self, ln_corner: FloatArray) -> FloatArray:
         """Put the poles where together they have the corner."""
         return (ln_corner - self._ln_shrinkage)[:, None]
@@ -127,7 +157,8 @@ class TwoPole:
     """``H = 1 / (1 + s/(Q w0) + (s/w0)^2)``; parameters ln f0 and ln Q."""
 
     name = "two-pole"
-    poles = 2
+    poles = degree = 2
+    root = 1.0
     parameters: tuple[str, ...] = ("ln_f0", "ln_q")
 
     def evaluate(
@@ -150,6 +181,12 @@ class TwoPole:
         size = below**2 + damped**2
         by = np.stack([damped * (1.0 + ratio) / size, below * damped / size], axis=2)
         return -np.arctan2(damped, below), by
+
+    def of_polynomial(self, coefficients: FloatArray, ln_unit: float) -> FloatArray:
+        """Return ln f0 and ln Q."""
+        square = np.sqrt(coefficients[:, 1])
+        ln_q = -_HALF * np.log(2.0 + coefficients[:, 0] / square)
+        return np.stack([ln_unit - _HALF * np.log(square), ln_q], axis=1)
 
     def start(self, ln_corner: FloatArray) -> FloatArray:
         """Begin maximally flat."""

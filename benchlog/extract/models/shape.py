@@ -1,6 +1,6 @@
 """What every response shape shows to the solver."""
 
-from typing import Protocol
+from typing import Protocol, runtime_checkable
 
 from benchlog.curve import FloatArray
 
@@ -50,5 +50,25 @@ class Shape(Protocol):
 
         Returns:
             ln gain, shape (sweeps, points), and derivatives, shape (sweeps, points, parameters).
+        """
+        ...
+
+
+@runtime_checkable
+class ClosedForm(Protocol):
+    """A shape that some equations linear in other parameters solve almost to the end."""
+
+    def near(
+        self, ln_frequency: FloatArray, ln_gain: FloatArray, weight: FloatArray
+    ) -> FloatArray | None:
+        """Return parameters far closer to the answer than its uncertainty; None without a way.
+
+        Args:
+            ln_frequency: Shape (sweeps, points).
+            ln_gain: Same shape.
+            weight: 0 where a point does not count, same shape.
+
+        Returns:
+            Shape (sweeps, parameters); a rough start where a sweep has no such solution.
         """
         ...
