@@ -29,7 +29,7 @@ class Landmark:
 
 def upper_corner(shape: Composed, parameters: FloatArray) -> Landmark:
     """Return the last downward crossing of plateau/sqrt(2)."""
-    ln_corner = shape.rolloff.ln_corner(shape.upper(parameters))
+    ln_corner = shape.rolloff.ln_fallen(shape.upper(parameters), _LN_ROOT_TWO)
     if shape.edge is not None:
         ln_corner = _settled(shape, parameters, ln_corner)
     return _implicit(shape, parameters, ln_corner)
@@ -95,10 +95,14 @@ def signal_gbw(shape: Composed, parameters: FloatArray) -> Landmark:
 def unity(shape: Composed, parameters: FloatArray) -> Landmark:
     """Return where the response last falls through a gain of one; NaN where it is never above."""
     ln_gain = parameters[:, 0]
-    # Far up the response is its asymptote, which is where Newton's steps come from.
-    alone = shape.rolloff.ln_corner(shape.upper(parameters))
-    start = alone + np.maximum(ln_gain, 0.0) / shape.rolloff.poles + 1.0
-    ln_f = _settled(shape, parameters, start, level=-ln_gain)
+    upper = shape.upper(parameters)
+    if shape.edge is None:
+        ln_f = shape.rolloff.ln_fallen(upper, np.where(ln_gain > 0, ln_gain, np.nan))
+    else:
+        # Far up the response is its asymptote, which is where Newton's steps come from.
+        alone = shape.rolloff.ln_fallen(upper, _LN_ROOT_TWO)
+        start = alone + np.maximum(ln_gain, 0.0) / shape.rolloff.poles + 1.0
+        ln_f = _settled(shape, parameters, start, level=-ln_gain)
     return _implicit(shape, parameters, np.where(ln_gain > 0, ln_f, np.nan), absolute=True)
 
 
@@ -163,8 +167,12 @@ def _implicit(
         absolute: Whether it is of a fixed gain, not of one relative to the plateau.
     """
     with np.errstate(all="ignore"):
-        _, slope = _height(shape, parameters, ln_f)
         _, by = shape.evaluate(parameters, ln_f[:, None])
         moved = by[:, 0, :].copy()
+        if shape.edge is None:
+            # Only the ratio of frequency to the first parameter of the upper edge matters.
+            slope = -moved[:, 1]
+        else:
+            _, slope = _height(shape, parameters, ln_f)
         moved[:, 0] -= 0.0 if absolute else 1.0
         return Landmark(ln_value=ln_f, by=-moved / slope[:, None])

@@ -122,12 +122,15 @@ def _chunk(data: Data, design: Design | None, shape: str) -> dict[str, npt.NDArr
         "shape": np.array([one.shape.name for one in choice.tried])[choice.chosen],
     }
     answer["validity"] |= choice.remarks()
+    compared = bool((choice.runner_up >= 0).any())
     for name in FIGURES:
         value = _taken(by_shape, choice.chosen, name) if rows else np.empty(0)
         u = _taken(by_shape, choice.chosen, f"u_{name}")
-        other = _taken(by_shape, choice.runner_up, name)
-        apart = np.where(np.isfinite(other), other - value, 0.0)
-        answer[name], answer[f"u_{name}"] = value, np.hypot(u, apart)
+        answer[name], answer[f"u_{name}"] = value, u
+        if compared:
+            other = _taken(by_shape, choice.runner_up, name)
+            apart = np.where(np.isfinite(other), other - value, 0.0)
+            answer[f"u_{name}"] = np.hypot(u, apart)
     if through is not None:
         unexplained = (answer["validity"] & int(Fault.POOR_FIT | Fault.NOT_CONVERGED)) != 0
         every = not by_corner or shape == BY_DESIGN

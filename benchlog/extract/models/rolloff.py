@@ -67,8 +67,13 @@ class Rolloff(Protocol):
         """Guess the parameters from a half-power corner, shape (sweeps,)."""
         ...
 
-    def ln_corner(self, parameters: FloatArray) -> FloatArray:
-        """Return where this alone is at half power, shape (sweeps,)."""
+    def ln_fallen(self, parameters: FloatArray, ln_fall: FloatArray | float) -> FloatArray:
+        """Return where this alone has last fallen by so much, NaN for none, shape (sweeps,).
+
+        Args:
+            parameters: Shape (sweeps, own parameters); the first is the logarithm of a frequency.
+            ln_fall: Above zero; shape (sweeps,) or one for all.
+        """
         ...
 
 
@@ -103,9 +108,10 @@ class OnePole:
         """Take the corner."""
         return ln_corner[:, None].copy()
 
-    def ln_corner(self, parameters: FloatArray) -> FloatArray:
-        """Return the corner."""
-        return parameters[:, 0]
+    def ln_fallen(self, parameters: FloatArray, ln_fall: FloatArray | float) -> FloatArray:
+        """Return where this has fallen by so much."""
+        ln_fallen: FloatArray = parameters[:, 0] + _HALF * np.log(np.expm1(2.0 * ln_fall))
+        return ln_fallen
 
 
 class EqualPoles:
@@ -147,10 +153,11 @@ class EqualPoles:
         """Put the poles where together they have the corner."""
         return (ln_corner - self._ln_shrinkage)[:, None]
 
-    def ln_corner(self, parameters: FloatArray) -> FloatArray:
-        """Return the half-power corner of all together."""
-        ln_corner: FloatArray = parameters[:, 0] + self._ln_shrinkage
-        return ln_corner
+    def ln_fallen(self, parameters: FloatArray, ln_fall: FloatArray | float) -> FloatArray:
+        """Return where all together have fallen by so much."""
+        each = np.expm1(2.0 / self.poles * ln_fall)
+        ln_fallen: FloatArray = parameters[:, 0] + _HALF * np.log(each)
+        return ln_fallen
 
 
 class TwoPole:
@@ -192,14 +199,15 @@ class TwoPole:
         """Begin maximally flat."""
         return np.stack([ln_corner, np.full_like(ln_corner, -_HALF * np.log(2.0))], axis=1)
 
-    def ln_corner(self, parameters: FloatArray) -> FloatArray:
-        """Return the last downward crossing of half power."""
+    def ln_fallen(self, parameters: FloatArray, ln_fall: FloatArray | float) -> FloatArray:
+        """Return the last place where this has fallen by so much."""
+        above = np.expm1(2.0 * ln_fall)
         inside = 1.0 - _HALF * np.exp(-2.0 * parameters[:, 1])
-        # For a < 0 the plain form a + sqrt(a^2 + 1) loses its digits.
-        root = np.sqrt(inside**2 + 1.0)
-        square = np.where(inside >= 0, inside + root, 1.0 / (root - np.minimum(inside, 0.0)))
-        ln_corner: FloatArray = parameters[:, 0] + _HALF * np.log(square)
-        return ln_corner
+        # For a < 0 the plain form a + sqrt(a^2 + b) loses its digits.
+        root = np.sqrt(inside**2 + above)
+        square = np.where(inside >= 0, inside + root, above / (root - np.minimum(inside, 0.0)))
+        ln_fallen: FloatArray = parameters[:, 0] + _HALF * np.log(square)
+        return ln_fallen
 
 
 def _squared(ln_frequency: FloatArray, parameters: FloatArray) -> FloatArray:
