@@ -42,8 +42,7 @@ def sweep(bench_file: Path, uuid: str) -> None:
             say("kept", point.position)
 
         result = run_sweep(bench, SCHEDULE, keep=keep, stop=stop)
-        if result.state != "unfinished":
-            logbook.end_sweep(uuid, result.state, result.why)
+        logbook.end_sweep(uuid, result.state, result.why)
         say("end", result.state, stop.exit_code)
 
 

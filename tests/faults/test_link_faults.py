@@ -116,7 +116,7 @@ def test_with_the_logbook(tmp_path: Path, *, for_good: bool) -> None:
                 SCHEDULE,
                 keep=lambda point: logbook.add_point(start.uuid, point),  # noqa: B023 - used at once
             )
-            logbook.end_sweep(start.uuid, result.state, result.why)  # type: ignore[arg-type]
+            logbook.end_sweep(start.uuid, result.state, result.why)
             assert logbook.points(start.uuid) == result.points
         assert_sound(bench, result, result.points)
         with closing(sqlite3.connect(path)) as connection:

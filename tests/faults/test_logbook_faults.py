@@ -46,7 +46,7 @@ def sweep_into(path: Path, fault: Fault, *, bench: FakeBench, kept: list[Point])
             kept.append(point)
 
         result = run_sweep(bench, SCHEDULE, keep=keep)
-        logbook.end_sweep(START.uuid, result.state, result.why)  # type: ignore[arg-type]
+        logbook.end_sweep(START.uuid, result.state, result.why)
     return result
 
 
