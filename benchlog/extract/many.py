@@ -12,6 +12,7 @@ from benchlog.extract.by_design import SHAPE as BY_DESIGN
 from benchlog.extract.choose import choose, shape_named
 from benchlog.extract.draw import drawn
 from benchlog.extract.figures import extract
+from benchlog.extract.models.polynomial import shared_row
 from benchlog.extract.reduce import Data, Reduced, gbw_faults, implied_gbw, prepare, too_few
 from benchlog.extract.sentences import faults_behind
 from benchlog.extract.through_design import corner_is_the_amplifiers, has_noise_gain
@@ -99,7 +100,8 @@ def _data(
     phase_deg: FloatArray | None,
 ) -> Data:
     with np.errstate(invalid="ignore"):
-        usable = np.isfinite(gain) & (gain > 0) & (frequency_hz > 0)
+        row = shared_row(frequency_hz)
+        usable = (gain > 0) & (gain < np.inf) & ((row > 0) & (row < np.inf))
         if u_gain_rel is not None:
             usable &= np.isfinite(u_gain_rel) & (u_gain_rel > 0)
         if phase_deg is not None:

@@ -10,6 +10,7 @@ from benchlog.design.model import Design
 from benchlog.extract.implied import DesignGbw, Implied
 from benchlog.extract.landmarks import Landmark, crossover, lower_corner, upper_corner
 from benchlog.extract.models.composed import Composed
+from benchlog.extract.models.polynomial import shared_row
 from benchlog.extract.phase import Phase, solve_with_phase
 from benchlog.extract.robust import most_wild_points, worst_point
 from benchlog.extract.solve import Fit, solve
@@ -21,7 +22,8 @@ class Data:
     """Sweeps as the solver takes them, arrays of shape (sweeps, points).
 
     Attributes:
-        ln_frequency, ln_gain: Zero where a point does not count.
+        ln_frequency: Finite everywhere; the rows may share one memory.
+        ln_gain: Zero where a point does not count.
         weight: Inverse variance of ln gain where ``stated``, else 1; 0 where it does not count.
         stated: Whether the noise is stated.
         phase: Of the same points, where it was measured and is to be fitted.
@@ -115,14 +117,21 @@ def prepare(
             radians=np.where(usable, np.radians(phase_deg), 0.0),
             weight=None if u_phase is None or u_gain_rel is None else u_phase**-2.0,
         )
+    row = shared_row(frequency_hz)
     with np.errstate(invalid="ignore", divide="ignore"):
-        return Data(
-            ln_frequency=np.where(usable, np.log(frequency_hz), 0.0),
-            ln_gain=np.where(usable, np.log(gain), 0.0),
-            weight=np.where(usable, 1.0 if u_gain_rel is None else u_gain_rel**-2.0, 0.0),
-            stated=u_gain_rel is not None,
-            phase=phase,
-        )
+        ln_frequency = np.log(row)
+        ln_gain = np.log(gain)
+        weight = np.ones(gain.shape) if u_gain_rel is None else u_gain_rel**-2.0
+    if not usable.all():
+        ln_frequency = np.where(np.isfinite(ln_frequency), ln_frequency, 0.0)
+        ln_gain, weight = np.where(usable, ln_gain, 0.0), np.where(usable, weight, 0.0)
+    return Data(
+        ln_frequency=np.broadcast_to(ln_frequency, gain.shape),
+        ln_gain=ln_gain,
+        weight=weight,
+        stated=u_gain_rel is not None,
+        phase=phase,
+    )
 
 
 def reduce_sweeps(shape: Composed, data: Data) -> Reduced:

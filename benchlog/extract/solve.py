@@ -10,6 +10,7 @@ import numpy as np
 import numpy.typing as npt
 
 from benchlog.curve import FloatArray
+from benchlog.extract.models.polynomial import shared_row
 from benchlog.extract.models.shape import ClosedForm, Shape
 
 _MOST_STEPS = 60
@@ -109,11 +110,12 @@ def solve(
     Returns:
         The fits; where one did not converge the flag says so.
     """
-    # A frequency row that all sweeps share stays one row, in memory too.
-    x, y = ln_frequency, ln_gain
-    counts = weight > 0
+    x, y, counts = ln_frequency, ln_gain, weight > 0
     if not counts.all():
-        x, y = np.where(counts, x, 0.0), np.where(counts, y, 0.0)
+        y = np.where(counts, y, 0.0)
+        # A frequency row that all sweeps share stays one row, in memory too.
+        if not np.isfinite(shared_row(x)).all():
+            x = np.where(counts, x, 0.0)
     near = None
     if start is None:
         near = shape.near(x, y, weight) if isinstance(shape, ClosedForm) else None

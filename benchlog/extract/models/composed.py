@@ -63,17 +63,16 @@ class Composed:
         if self.edge is not None:
             return None
         root = self.rolloff.root
-        counted = np.where(weight > 0, ln_gain, -np.inf)
-        top = np.maximum(counted.max(axis=1, initial=-np.inf, keepdims=True), -_FARTHEST)
-        middle = 0.5 * (ln_frequency.max() + ln_frequency.min()) if ln_frequency.size else 0.0
+        top = float(ln_gain.max(initial=-_FARTHEST))
         row = shared_row(ln_frequency)
+        middle = 0.5 * float(row.max() + row.min()) if row.size else 0.0
         powers = np.exp(2.0 * (row - middle))
-        size = np.minimum(ln_gain - top, 0.0)
+        size = ln_gain - top
         size *= 2.0 / root
         np.exp(size, out=size)
         solution = weighted_polynomial(size, powers, weight, degree=self.rolloff.degree)
         with np.errstate(all="ignore"):
-            plateau = top[:, 0] - 0.5 * root * np.log(solution[:, 0])
+            plateau = top - 0.5 * root * np.log(solution[:, 0])
             ratio = solution[:, 1:] / solution[:, :1]
             found = np.column_stack([plateau, self.rolloff.of_polynomial(ratio, middle)])
         lost = ~np.isfinite(found).all(axis=1)
@@ -92,7 +91,7 @@ class Composed:
         by = np.empty((len(self.parameters), *values.shape))
         by[0] = 1.0
         by[self._upper] = np.moveaxis(by_upper, 2, 0)
-        values = values + ln_gain
+        values += ln_gain
         if self.edge is not None:
             lower, by[-1], by_gain = self.edge.evaluate(parameters[:, -1:], ln_gain, ln_frequency)
             values = values + lower

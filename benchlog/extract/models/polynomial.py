@@ -7,7 +7,7 @@ from benchlog.curve import FloatArray
 
 def shared_row(array: FloatArray) -> FloatArray:
     """Return one row where all rows are the same memory, else the array as it is."""
-    return array[:1] if array.strides[0] == 0 else array
+    return array[:1] if array.strides[0] == 0 and len(array) > 1 else array
 
 
 def weighted_polynomial(

@@ -9,6 +9,7 @@ from typing import Protocol
 import numpy as np
 
 from benchlog.curve import FloatArray
+from benchlog.extract.models.polynomial import shared_row
 
 _FARTHEST = 300.0
 _HALF = 0.5
@@ -91,7 +92,10 @@ class OnePole:
         """Return ln magnitude and its derivative by ln fc."""
         ratio = _squared(ln_frequency, parameters)
         above = 1.0 + ratio
-        return -_HALF * np.log(above), (ratio / above)[:, :, None]
+        ratio /= above
+        np.log(above, out=above)
+        above *= -_HALF
+        return above, ratio[:, :, None]
 
     def phase(
         self, parameters: FloatArray, ln_frequency: FloatArray
@@ -174,9 +178,20 @@ class TwoPole:
         """Return ln magnitude and its derivatives by ln f0 and ln Q."""
         ratio = _squared(ln_frequency, parameters)
         damping = np.exp(-2.0 * np.clip(parameters[:, 1:2], -50.0, 50.0))
-        size = (1.0 - ratio) ** 2 + ratio * damping
-        by_f0 = ratio * (damping - 2.0 * (1.0 - ratio)) / size
-        return -_HALF * np.log(size), np.stack([by_f0, ratio * damping / size], axis=2)
+        below = 1.0 - ratio
+        damped = ratio * damping
+        size = below * below
+        size += damped
+        damped /= size
+        below *= ratio
+        below /= size
+        by = np.empty((2, *size.shape))
+        np.multiply(below, -2.0, out=by[0])
+        by[0] += damped
+        by[1] = damped
+        np.log(size, out=size)
+        size *= -_HALF
+        return size, np.moveaxis(by, 0, 2)
 
     def phase(
         self, parameters: FloatArray, ln_frequency: FloatArray
@@ -212,6 +227,13 @@ class TwoPole:
 
 def _squared(ln_frequency: FloatArray, parameters: FloatArray) -> FloatArray:
     """Return the square of frequency over the first parameter, kept within what exp can hold."""
-    twice = 2.0 * (ln_frequency - parameters[:, :1])
-    ratio: FloatArray = np.exp(np.minimum(twice, _FARTHEST, out=twice), out=twice)
-    return ratio
+    row = shared_row(ln_frequency)
+    if row.shape == ln_frequency.shape:
+        twice = 2.0 * (ln_frequency - parameters[:, :1])
+        ratio: FloatArray = np.exp(np.minimum(twice, _FARTHEST, out=twice), out=twice)
+        return ratio
+    # One exponential for each point and each sweep, not for each point of each sweep.
+    half = _HALF * _FARTHEST
+    above = np.clip(2.0 * (row - row[0, 0]), -half, half)
+    below = np.clip(2.0 * (row[0, 0] - parameters[:, :1]), -half, half)
+    return np.asarray(np.exp(above) * np.exp(below))
