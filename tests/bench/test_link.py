@@ -235,6 +235,25 @@ def test_more_answers_than_questions_are_refused(instrument: ScpiServer) -> None
     wire.close()
 
 
+def test_answer_that_comes_between_two_questions_is_refused(instrument: ScpiServer) -> None:
+    """The next answer would be the one to nothing."""
+    instrument.answers["EVENT"] = b"5\n"
+    instrument.late_s["EVENT"] = 0.05
+    wire = opened(instrument)
+    wire.send("EVENT")
+    end_s = time.monotonic() + 2.0
+    while not wire._transport.unread() and time.monotonic() < end_s:
+        time.sleep(0.001)
+
+    with pytest.raises(ReplyError, match="nobody asked for") as refused:
+        wire.ask("GOOD?", timeout_s=1.0)
+
+    assert refused.value.raw == "5\n"
+    assert "GOOD?" not in instrument.asked
+    assert wire.dirty
+    wire.close()
+
+
 def test_flood_does_not_keep_recovery_for_ever(instrument: ScpiServer) -> None:
     """Bounded work, then a fresh connection."""
     instrument.answers["FLOOD?"] = b"1\n" * 5000

@@ -116,6 +116,19 @@ def test_recovery_without_device_clear(wire: VisaWire) -> None:
     assert wire.ask("OUTPut?", timeout_s=1.0) == "OFF"
 
 
+def test_recovery_clears_where_the_transport_can(
+    wire: VisaWire, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """A device clear belongs to USB, GPIB and the like; a socket has none."""
+    cleared: list[bool] = []
+    monkeypatch.setattr(
+        wire._transport._resource, "clear", lambda: cleared.append(True), raising=True
+    )
+    wire.recover()
+
+    assert cleared == [True]
+
+
 def test_address_where_nothing_is(backend: str) -> None:
     """Refused at opening."""
     with pytest.raises(LinkRefused):

@@ -60,6 +60,8 @@ def test_states_are_never_numbers(reply: str, status: Status) -> None:
 def test_large_number_is_legal_where_the_query_says_so() -> None:
     """A source answers 9.9E37 for a load of high impedance."""
     assert parse_number("9.9E37", NumberGrammar(states=False)).value == 9.9e37
+    with pytest.raises(ReplyError):
+        parse_number("1e400", NumberGrammar(states=False))
 
 
 @pytest.mark.parametrize(

@@ -268,6 +268,24 @@ def test_trouble_in_closing_one_closes_the_others(
     bench.output_meter.close()
 
 
+def test_source_is_closed_last(
+    read: Reader, servers: list[ScpiServer], monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """In the reverse order of opening."""
+    closed: list[str] = []
+    with open_bench(read(on(servers))) as bench:
+        for name in ("source", "input_meter", "output_meter"):
+            role = getattr(bench, name)
+
+            def close(name: str = name, really: Callable[[], None] = role.close) -> None:
+                closed.append(name)
+                really()
+
+            monkeypatch.setattr(role, "close", close)
+
+    assert closed == ["output_meter", "input_meter", "source"]
+
+
 def test_waits_end_when_the_work_is_to_end(read: Reader, servers: list[ScpiServer]) -> None:
     """The bench's clock looks at the stop sign."""
 
