@@ -12,6 +12,7 @@ from benchlog.extract.by_design import SHAPE as BY_DESIGN
 from benchlog.extract.choose import choose, shape_named
 from benchlog.extract.draw import drawn
 from benchlog.extract.figures import extract
+from benchlog.extract.landmarks import Landmark
 from benchlog.extract.models.polynomial import shared_row
 from benchlog.extract.reduce import Data, Reduced, gbw_faults, implied_gbw, prepare, too_few
 from benchlog.extract.sentences import faults_behind
@@ -20,7 +21,7 @@ from benchlog.extract.validity import FIGURES_TAKEN, Fault
 
 _DB_PER_NEPER = 20.0 / np.log(10.0)
 # So many sweeps at a time keep the working arrays in the processor's cache.
-_CHUNK = 512
+_CHUNK = 1024
 _LONGEST_NAME = 40
 FIGURES = (
     "gain",
@@ -200,7 +201,7 @@ def _of_shape(reduced: Reduced, design: Design | None) -> dict[str, FloatArray]:
             faults |= np.where(faults == 0, gbw_faults(implied), 0)
         answer = {"validity": faults.astype(float)}
         for name, one in landmarks.items():
-            u_ln = np.sqrt(np.einsum("sp,spq,sq->s", one.by, covariance, one.by))
+            u_ln = _spread(one, covariance)
             if name == "gbw_hz" and implied is not None:
                 u_ln = np.hypot(u_ln, implied.u_parts)
             answer[name], answer[f"u_{name}"] = np.exp(one.ln_value), np.exp(one.ln_value) * u_ln
@@ -213,6 +214,14 @@ def _of_shape(reduced: Reduced, design: Design | None) -> dict[str, FloatArray]:
     answer["u_peaking_db"] = np.where(level, 0.0, answer["u_peaking_db"])
     _take_away(answer, faults)
     return answer
+
+
+def _spread(one: Landmark, covariance: FloatArray) -> FloatArray:
+    """Return the standard uncertainty of a landmark's logarithm, shape (sweeps,)."""
+    if np.isnan(one.ln_value).all():
+        return one.ln_value
+    moved = (covariance @ one.by[:, :, None])[:, :, 0]
+    return np.asarray(np.sqrt(np.einsum("sp,sp->s", one.by, moved)))
 
 
 def _take_away(answer: dict[str, FloatArray], faults: npt.NDArray[np.int64]) -> None:

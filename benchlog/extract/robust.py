@@ -32,22 +32,23 @@ def worst_point(
     """
     place = np.zeros(len(weight), np.int64)
     wild = np.zeros(len(weight), np.bool_)
-    rows = np.flatnonzero(_room_for_wild(fit, weight))
+    rows = np.flatnonzero(_room_for_wild(fit, weight, stated=stated))
     if rows.size:
         place[rows], wild[rows] = _worst(fit.rows(rows), weight[rows], stated=stated)
     return place, wild
 
 
-def _room_for_wild(fit: Fit, weight: FloatArray) -> npt.NDArray[np.bool_]:
+def _room_for_wild(fit: Fit, weight: FloatArray, *, stated: bool) -> npt.NDArray[np.bool_]:
     """Tell sweeps that can have a wild point, by bounds that need no leverage of each point."""
-    size = fit.derivatives.shape[2]
+    by_all, size = fit.derivatives, fit.derivatives.shape[2]
     with np.errstate(all="ignore"):
-        steepest = np.stack(
-            [np.abs(fit.derivatives[:, :, one]).max(axis=1, initial=0.0) for one in range(size)],
-            axis=1,
+        # Derivatives of all sweeps together have one bound, which is quick to find.
+        steepest = np.array(
+            [max(by.max(initial=0.0), -by.min(initial=0.0)) for by in np.moveaxis(by_all, 2, 0)]
         )
-        leverage = weight.max(axis=1, initial=0.0) * np.einsum(
-            "sp,spq,sq->s", steepest, np.abs(fit.inverse_normal), steepest
+        heaviest = weight.max(axis=1, initial=0.0) if stated else weight.max(initial=0.0)
+        leverage = heaviest * np.einsum(
+            "spq,pq->s", np.abs(fit.inverse_normal), np.outer(steepest, steepest)
         )
         largest = (weight * fit.residuals**2).max(axis=1, initial=0.0) / (1.0 - leverage)
         dof = np.maximum(fit.count - size - 1, 1)
