@@ -11,6 +11,7 @@ from benchlog.bench.clock import RealClock, StopSign
 from benchlog.bench.driver import Driver
 from benchlog.bench.driver_read import read_driver
 from benchlog.bench.faces import ClockFace
+from benchlog.bench.lease import Lease
 from benchlog.bench.link import open_link
 from benchlog.bench.reply import parse_identity
 from benchlog.bench.roles import Meter, Source, display_ratio
@@ -143,12 +144,14 @@ class Bench:
         output_meter: Meter,
         input_meter: Meter | None,
         clock: ClockFace,
+        lease: Lease | None = None,
     ) -> None:
         self.setup = setup
         self.source = source
         self.output_meter = output_meter
         self.input_meter = input_meter
         self.clock = clock
+        self._lease = lease
 
     def __enter__(self) -> "Bench":
         """Return the bench itself."""
@@ -176,6 +179,8 @@ class Bench:
     def close(self) -> None:
         """Close all links, the source last and whatever happens; twice is quiet."""
         with ExitStack() as closing:
+            if self._lease is not None:
+                closing.callback(self._lease.close)
             for role in (self.source, self.input_meter, self.output_meter):
                 if role is not None:
                     closing.callback(role.close)
@@ -216,11 +221,15 @@ def open_bench(
         stop: Cuts waits short once it is set.
 
     Raises:
-        LinkRefused: An instrument does not answer.
+        LinkRefused: An instrument does not answer, or somebody else uses it.
         IdentityError: Another instrument answers than the bench file names.
     """
     opener = open_wire or _open_wire
     with ExitStack() as opened:
+        lease = None
+        if open_wire is None:
+            lease = Lease(place.address for place in setup.places())
+            opened.callback(lease.close)
         wires: dict[str, Wire] = {}
         for place in setup.places():
             wires[place.role] = _opened(opener, place, opened)
@@ -241,6 +250,7 @@ def open_bench(
         if input_place is None
         else Meter(wires[input_place.role], input_place.driver, role=input_place.role),
         clock=clock or RealClock(stop),
+        lease=lease,
     )
 
 

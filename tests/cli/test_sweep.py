@@ -186,3 +186,15 @@ def test_bench_check_names_what_is_missing(run: Run, folder: Path, server: Pract
     assert ran.code == 5
     assert "TROUBLE" in ran.out
     assert "NOT READY" in ran.out
+
+
+def test_bench_in_use_is_not_shared(run: Run, folder: Path) -> None:
+    """A second sweep would change the source under the first one's readings."""
+    from benchlog.bench.setup import open_bench, read_bench
+
+    with open_bench(read_bench(folder / "bench.toml")):
+        ran = run("-C", folder, "sweep", "0002")
+
+    assert ran.code == 5
+    assert "the instrument is in use by process" in ran.err
+    assert run("-C", folder, "sweep", "0002").code == 0
