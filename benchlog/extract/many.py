@@ -20,8 +20,8 @@ from benchlog.extract.through_design import corner_is_the_amplifiers, has_noise_
 from benchlog.extract.validity import FIGURES_TAKEN, Fault
 
 _DB_PER_NEPER = 20.0 / np.log(10.0)
-# So many sweeps at a time keep the working arrays in the processor's cache.
-_CHUNK = 1024
+# So many points at a time keep the working arrays in the processor's cache.
+_CHUNK_POINTS = 65536
 _LONGEST_NAME = 40
 FIGURES = (
     "gain",
@@ -74,8 +74,9 @@ def extract_many(
     noise = None if u_gain_rel is None else _beside(u_gain_rel, gains, "u_gain_rel")
     phases = None if phase_deg is None else _beside(phase_deg, gains, "phase_deg")
     chunks = []
-    for at in range(0, max(len(gains), 1), _CHUNK):
-        rows = slice(at, at + _CHUNK)
+    size = max(1, _CHUNK_POINTS // max(gains.shape[1], 1))
+    for at in range(0, max(len(gains), 1), size):
+        rows = slice(at, at + size)
         data = _data(
             frequencies[rows],
             gains[rows],

@@ -27,7 +27,7 @@ _LEAST_DAMPING = 1e-12
 # What a last step may leave over, in standard deviations, and its length.
 _LEFT_OVER = 1e-4
 _SHORT_STEP = 1e-2
-_CLOSED_FORM = 2
+_LEAST_DETERMINANT = 1e-6
 # Of the normal matrix with a diagonal of one; below it an inverse has no digits left.
 _LEAST_EIGENVALUE = 1e-13
 
@@ -273,13 +273,30 @@ def _damped(normal: FloatArray, slope: FloatArray, damping: FloatArray) -> Float
 
 
 def _adjugate(matrix: FloatArray) -> tuple[FloatArray, FloatArray] | None:
-    """Return adjugate and determinant of symmetric 2 x 2 matrices; None for larger ones."""
-    if matrix.shape[1] != _CLOSED_FORM:
+    """Return adjugates and determinants of symmetric matrices with a diagonal of about one.
+
+    None for matrices larger than 3 x 3, and where one of 3 x 3 is so close to singular that a
+    product of two small eigenvalues would take the digits of its determinant.
+    """
+    size = matrix.shape[1]
+    if size == 2:
+        adjugate = matrix[:, ::-1, ::-1].copy()
+        adjugate[:, 0, 1] *= -1.0
+        adjugate[:, 1, 0] *= -1.0
+    elif size == 3:
+        (a, b, c), (_, d, e), (_, _, f) = matrix.transpose(1, 2, 0).copy()
+        adjugate = np.empty_like(matrix)
+        adjugate[:, 0, 0], adjugate[:, 1, 1] = d * f - e * e, a * f - c * c
+        adjugate[:, 2, 2] = a * d - b * b
+        adjugate[:, 0, 1] = adjugate[:, 1, 0] = c * e - b * f
+        adjugate[:, 0, 2] = adjugate[:, 2, 0] = b * e - c * d
+        adjugate[:, 1, 2] = adjugate[:, 2, 1] = b * c - a * e
+    else:
         return None
-    adjugate = matrix[:, ::-1, ::-1].copy()
-    adjugate[:, 0, 1] *= -1.0
-    adjugate[:, 1, 0] *= -1.0
-    return adjugate, matrix[:, 0, 0] * matrix[:, 1, 1] - matrix[:, 0, 1] ** 2
+    determinant = np.einsum("sp,sp->s", matrix[:, 0], adjugate[:, 0])
+    if size > 2 and determinant.min(initial=1.0) < _LEAST_DETERMINANT:
+        return None
+    return adjugate, determinant
 
 
 def _normal(
@@ -310,8 +327,8 @@ def _inverse(normal: FloatArray) -> FloatArray:
         scaled[~known] = np.eye(normal.shape[1])
         inverse = np.asarray(np.linalg.inv(scaled))
     else:
-        # Beside a largest eigenvalue between 1 and 2, the determinant is the least one.
-        known &= closed[1] > _LEAST_EIGENVALUE
+        # The trace of the inverse is the sum of the reciprocals of the eigenvalues.
+        known &= closed[1] > _LEAST_EIGENVALUE * np.einsum("spp->s", closed[0])
         inverse = closed[0] / np.where(known, closed[1], 1.0)[:, None, None]
     unscaled: FloatArray = inverse / safe[:, :, None] / safe[:, None, :]
     unscaled[~known] = np.inf
