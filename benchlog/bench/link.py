@@ -234,8 +234,9 @@ class _Transport:
         except BenchlogError:
             raise
         except pyvisa.VisaIOError as error:
-            gone = error.error_code in _LOST or self._peer_is_gone()
-            if gone or error.error_code != StatusCode.error_timeout:
+            if self._peer_is_gone():
+                raise self._lost(message, "it closed the connection") from error
+            if error.error_code in _LOST or error.error_code != StatusCode.error_timeout:
                 raise self._lost(message, _first_line(error)) from error
             raise LinkTimeout(
                 f"no answer to {message!r} within {time.monotonic() - began_s:.2g} s",

@@ -16,9 +16,16 @@ def find_sweep(logbook: "Logbook", name: str) -> "StoredSweep":
     Raises:
         LogbookError: There is none, or the beginning fits several.
     """
-    of_serial = [sweep for sweep in logbook.sweeps_of(name) if sweep.state == "complete"]
+    of_serial = logbook.sweeps_of(name)
+    complete = [sweep for sweep in of_serial if sweep.state == "complete"]
+    if complete:
+        return complete[-1]
     if of_serial:
-        return of_serial[-1]
+        raise LogbookError(
+            f"serial {name} has no complete sweep: the last one is {of_serial[-1].state}",
+            where=f"sweep {of_serial[-1].start.uuid[:8]}",
+            hint="sweep it again, or name a sweep by the beginning of its UUID",
+        )
     try:
         return logbook.sweep(name)
     except LogbookError as error:

@@ -198,3 +198,21 @@ def test_bench_in_use_is_not_shared(run: Run, folder: Path) -> None:
     assert ran.code == 5
     assert "the instrument is in use by process" in ran.err
     assert run("-C", folder, "sweep", "0002").code == 0
+
+
+def test_serial_without_a_complete_sweep_is_told_as_such(run: Run, folder: Path) -> None:
+    """Not as a serial that nobody knows."""
+    from benchlog.cli.street import new_uuid, now
+    from benchlog.records import SweepStart
+
+    start = SweepStart(
+        uuid=new_uuid(), serial="0009", kind="sweep", started_at=now(), design_sha256=None
+    )
+    with Logbook(folder / "logbook.db") as logbook:
+        logbook.begin_sweep(start)
+        logbook.end_sweep(start.uuid, "stopped", "for this test")
+
+    ran = run("-C", folder, "extract", "0009")
+
+    assert ran.code == 1
+    assert "serial 0009 has no complete sweep: the last one is stopped" in ran.err
