@@ -7,6 +7,7 @@ import numpy.typing as npt
 from scipy.special import chdtrc
 
 from benchlog.curve import FloatArray
+from benchlog.extract.models.polynomial import shared_row
 from benchlog.extract.solve import Fit
 
 # A fit needs more points than parameters, and enough left over to see its own scatter.
@@ -114,9 +115,8 @@ def faults_of(
         ln_lower: Lower corner; None for a shape that is flat down to zero frequency.
     """
     counts = weight > 0
-    lowest = np.where(counts, ln_frequency, np.inf).min(axis=1, initial=np.inf)
-    highest = np.where(counts, ln_frequency, -np.inf).max(axis=1, initial=-np.inf)
-    past = (counts & (ln_frequency >= ln_upper[:, None])).sum(axis=1)
+    lowest, highest = _ends(ln_frequency, counts)
+    past = np.count_nonzero(counts & (ln_frequency >= ln_upper[:, None]), axis=1)
     few = fit.count < FEWEST_POINTS
     above = ln_upper > highest
     variance = np.ones_like(fit.chi2) if stated else fit.chi2 / np.maximum(fit.count - 2, 1)
@@ -153,20 +153,59 @@ def _bent(
     if fit.parameters.shape[1] != _ONE_CORNER:
         return np.zeros(len(weight), np.bool_)
     low, high = np.log(SLOPE_BAND)
-    w = np.where((ln_over_corner >= low) & (ln_over_corner <= high), weight, 0.0)
-    count, total = (w > 0).sum(axis=1), np.maximum(w.sum(axis=1), 1e-300)
-    x = ln_over_corner - ((w * ln_over_corner).sum(axis=1) / total)[:, None]
-    y = fit.residuals - ((w * fit.residuals).sum(axis=1) / total)[:, None]
-    spread = np.maximum((w * x**2).sum(axis=1), 1e-300)
-    slope = (w * x * y).sum(axis=1) / spread
-    about = (w * (y - slope[:, None] * x) ** 2).sum(axis=1)
-    variance = np.ones_like(about) if stated else about / np.maximum(count - 2, 1)
-    certain = np.abs(slope) - _CERTAIN_SIGMAS * np.sqrt(variance / spread) > _SLOPE_ROOM
-    return np.asarray(certain & (count > FEWEST_PAST_CORNER), dtype=np.bool_)
+    w = weight * ((ln_over_corner >= low) & (ln_over_corner <= high))
+    wx = w * ln_over_corner
+    total = np.maximum(np.einsum("sn->s", w), 1e-300)
+    middle = np.einsum("sn->s", wx) / total
+    spread = np.einsum("sn,sn->s", wx, ln_over_corner) - middle**2 * total
+    spread = np.maximum(spread, 1e-300)
+    # No slope is steeper than all the residuals allow.
+    bent = fit.chi2 > _SLOPE_ROOM**2 * spread
+    rows = np.flatnonzero(bent)
+    if rows.size:
+        w, x, residuals = w[rows], ln_over_corner[rows] - middle[rows, None], fit.residuals[rows]
+        count, total, spread = (w > 0).sum(axis=1), total[rows], spread[rows]
+        y = residuals - ((w * residuals).sum(axis=1) / total)[:, None]
+        slope = (w * x * y).sum(axis=1) / spread
+        about = (w * (y - slope[:, None] * x) ** 2).sum(axis=1)
+        variance = np.ones_like(about) if stated else about / np.maximum(count - 2, 1)
+        certain = np.abs(slope) - _CERTAIN_SIGMAS * np.sqrt(variance / spread) > _SLOPE_ROOM
+        bent[rows] = certain & (count > FEWEST_PAST_CORNER)
+    return np.asarray(bent, dtype=np.bool_)
+
+
+def _ends(ln_frequency: FloatArray, counts: npt.NDArray[np.bool_]) -> tuple[FloatArray, FloatArray]:
+    """Return the lowest and the highest frequency that counts, shape (sweeps,)."""
+    if counts.all():
+        row = shared_row(ln_frequency)
+        lowest, highest = row.min(axis=1, initial=np.inf), row.max(axis=1, initial=-np.inf)
+        return (
+            np.broadcast_to(lowest, len(counts)),
+            np.broadcast_to(highest, len(counts)),
+        )
+    return (
+        np.where(counts, ln_frequency, np.inf).min(axis=1, initial=np.inf),
+        np.where(counts, ln_frequency, -np.inf).max(axis=1, initial=-np.inf),
+    )
+
+
+def _steps(values: FloatArray, ln_frequency: FloatArray, weight: FloatArray) -> FloatArray:
+    """Return differences of neighbours in frequency, 0 where one does not count."""
+    counts = weight > 0
+    if counts.all():
+        row = shared_row(ln_frequency)
+        if (row[:, 1:] >= row[:, :-1]).all():
+            return values[:, 1:] - values[:, :-1]
+    order = np.argsort(np.where(counts, ln_frequency, np.inf), axis=1)
+    in_order = np.take_along_axis(values, order, axis=1)
+    together = np.take_along_axis(counts, order, axis=1)[:, 1:]
+    return np.where(together, in_order[:, 1:] - in_order[:, :-1], 0.0)
 
 
 def _flattens(fit: Fit, ln_over_corner: FloatArray, weight: FloatArray) -> npt.NDArray[np.bool_]:
     """Tell a high end where the gain stops falling while the fitted curve goes on."""
+    if fit.residuals.max(initial=0.0) <= _FLOOR_RISE:
+        return np.zeros(len(weight), np.bool_)
     order = np.argsort(np.where(weight > 0, ln_over_corner, -np.inf), axis=1)[:, -_FLOOR_POINTS:]
     last = np.take_along_axis(fit.residuals, order, axis=1)
     beyond = np.take_along_axis(ln_over_corner, order, axis=1)[:, 0] > np.log(SLOPE_BAND[0])
@@ -206,13 +245,10 @@ def poor(
     if stated:
         improbable: npt.NDArray[np.bool_] = chdtrc(dof, fit.chi2) < _POOR_PROBABILITY
         return improbable
-    order = np.argsort(np.where(weight > 0, ln_frequency, np.inf), axis=1)
-    in_order = np.take_along_axis(fit.residuals, order, axis=1)
-    counts = np.take_along_axis(weight > 0, order, axis=1)
-    steps = np.where(counts[:, 1:], np.diff(in_order, axis=1), 0.0)
-    size = (fit.residuals**2).sum(axis=1)
-    ratio = (steps**2).sum(axis=1) / np.maximum(size, 1e-300)
-    sigma = 2.0 / np.sqrt(np.maximum((weight > 0).sum(axis=1), 1))
+    steps = _steps(fit.residuals, ln_frequency, weight)
+    size = np.einsum("sn,sn->s", fit.residuals, fit.residuals)
+    ratio = np.einsum("sn,sn->s", steps, steps) / np.maximum(size, 1e-300)
+    sigma = 2.0 / np.sqrt(np.maximum(fit.count, 1))
     meaningful = np.sqrt(size / dof) > _MEANINGLESS_REL
     patterned: npt.NDArray[np.bool_] = (ratio < 2.0 - _POOR_SIGMAS * sigma) & meaningful
     return patterned
