@@ -11,7 +11,7 @@ from benchlog.errors import Misuse
 from benchlog.extract.models.composed import Composed
 from benchlog.extract.models.edge import Edge, HighPass, Shelf
 from benchlog.extract.models.rolloff import EqualPoles, OnePole, Rolloff, TwoPole
-from benchlog.extract.reduce import Data, Reduced, reduce_sweeps, wild_points
+from benchlog.extract.reduce import Data, Reduced, reduce_sweeps, refitted, wild_points
 from benchlog.extract.validity import Fault
 
 # A richer shape must be better by more than this in AICc: of curves that have the simpler shape
@@ -116,8 +116,9 @@ def _decided(shapes: tuple[Composed, ...], data: Data) -> Choice:
     by_magnitude = replace(data, phase=None)
     fits = [reduce_sweeps(shape, by_magnitude) for shape in shapes]
     wild = _wild(fits, by_magnitude)
-    if wild.any():
-        fits = [reduce_sweeps(shape, by_magnitude.without(wild)) for shape in shapes]
+    rows = np.flatnonzero(wild.any(axis=1))
+    if rows.size:
+        fits = [refitted(fit, by_magnitude.without(wild), rows) for fit in fits]
     chosen, runner_up = _best(fits)
     if data.phase is None:
         return Choice(

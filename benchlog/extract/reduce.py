@@ -1,6 +1,7 @@
 """From arrays of sweeps to fitted parameters and what they can carry; shared by one and many."""
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, fields, replace
+from typing import Any, TypeVar
 
 import numpy as np
 import numpy.typing as npt
@@ -15,6 +16,8 @@ from benchlog.extract.phase import Phase, solve_with_phase
 from benchlog.extract.robust import most_wild_points, worst_point
 from benchlog.extract.solve import Fit, solve
 from benchlog.extract.validity import FEWEST_POINTS, Fault, faults_of, phase_disagrees
+
+T = TypeVar("T")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -38,6 +41,15 @@ class Data:
     def without(self, wild: npt.NDArray[np.bool_]) -> "Data":
         """Return the same sweeps without some points."""
         return replace(self, weight=np.where(wild, 0.0, self.weight))
+
+    def rows(self, some: npt.NDArray[np.int64]) -> "Data":
+        """Return some of the sweeps, without phase."""
+        return Data(
+            ln_frequency=self.ln_frequency[some],
+            ln_gain=self.ln_gain[some],
+            weight=self.weight[some],
+            stated=self.stated,
+        )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -166,6 +178,31 @@ def reduce_sweeps(shape: Composed, data: Data) -> Reduced:
         )
         | np.where(disagrees, int(Fault.PHASE_DISAGREES), 0),
     )
+
+
+def refitted(reduced: Reduced, data: Data, rows: npt.NDArray[np.int64]) -> Reduced:
+    """Return fits to data that differ in some sweeps only: the others are kept as they are.
+
+    Args:
+        reduced: Fits to the data as it was.
+        data: As it is now.
+        rows: The sweeps that differ.
+    """
+    anew = reduce_sweeps(reduced.shape, data.rows(rows))
+    return replace(_with_rows(reduced, anew, rows), data=data)
+
+
+def _with_rows(old: T, anew: T, rows: npt.NDArray[np.int64]) -> T:
+    """Return a record of arrays of shape (sweeps, ...) with some rows taken from another."""
+    changed: dict[str, Any] = {}
+    for field in fields(old):  # type: ignore[arg-type]  # records of arrays are dataclasses
+        before, after = getattr(old, field.name), getattr(anew, field.name)
+        if isinstance(before, np.ndarray):
+            changed[field.name] = before.copy()
+            changed[field.name][rows] = after
+        elif isinstance(before, Fit | Landmark):
+            changed[field.name] = _with_rows(before, after, rows)
+    return replace(old, **changed)  # type: ignore[type-var]
 
 
 def wild_points(reduced: Reduced) -> tuple[npt.NDArray[np.bool_], FloatArray]:
