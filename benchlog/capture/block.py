@@ -73,6 +73,8 @@ def find_block(text: Text) -> Block:
             if run is not None:
                 found.append((run, delimiter, decimal))
     if not found:
+        found = _beside_preamble(text.lines)
+    if not found:
         raise CaptureError(
             "no table of numbers was found",
             expected=f"at least {_FEWEST_ROWS} rows with two or more numbers each",
@@ -81,6 +83,27 @@ def find_block(text: Text) -> Block:
     best = max(found, key=_score)
     _refuse_ambiguous(best, found)
     return _block(text, best)
+
+
+def _beside_preamble(lines: Sequence[str]) -> list[tuple[_Run, str, Decimal]]:
+    """Find numbers that stand beside the preamble: in the last columns of every line."""
+    found: list[tuple[_Run, str, Decimal]] = []
+    for delimiter in (",", ";", "\t"):
+        for decimal in _decimals(delimiter):
+            cut = [delimiter.join(_numbers_at_end(line, delimiter, decimal)) for line in lines]
+            run = _longest_run(cut, delimiter, decimal)
+            if run is not None:
+                found.append((run, delimiter, decimal))
+    return found
+
+
+def _numbers_at_end(line: str, delimiter: str, decimal: Decimal) -> list[str]:
+    """Return the cells at the end of a line that are numbers, behind a blank or a word."""
+    cells = _cells(line, delimiter)
+    place = len(cells)
+    while place > 0 and number(cells[place - 1], decimal) is not None:
+        place -= 1
+    return cells[place:] if place > 0 else []
 
 
 def _score(candidate: tuple[_Run, str, Decimal]) -> tuple[int, int]:
@@ -194,7 +217,13 @@ def _header(above: Sequence[str], delimiter: str, width: int) -> tuple[tuple[str
     """Return the rows of words directly above the block, top first."""
     rows: list[tuple[str, ...]] = []
     for line in reversed(above):
-        cells = [cell.strip() for cell in _cells(line.lstrip(_COMMENT + " "), delimiter)]
+        if not line.strip() and not rows:
+            # A blank line may stand between names and numbers.
+            continue
+        cells = [
+            cell.strip()
+            for cell in _cells(line.lstrip(_COMMENT.replace(delimiter, "") + " "), delimiter)
+        ]
         if len(cells) != width or len(rows) == _MOST_HEADER_ROWS:
             break
         if any(number(cell, ".") is not None for cell in cells):

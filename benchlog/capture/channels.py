@@ -10,6 +10,8 @@ from benchlog.errors import CaptureError
 
 Side: TypeAlias = Literal["input", "output"]
 
+# What a person may say beside the sides: which column holds the times, and their unit.
+TIME, TIME_UNIT = "time", "time unit"
 _TIME = re.compile(r"(time|t|zeit|x|sec(ond)?s?|s|abscissa)([ _.-].*|\d*)?", re.IGNORECASE)
 _SECONDS = {"s": 1.0, "sec": 1.0, "ms": 1e-3, "us": 1e-6, "µs": 1e-6, "ns": 1e-9, "ps": 1e-12}
 _VOLTS = {"v": 1.0, "volt": 1.0, "volts": 1.0, "mv": 1e-3, "uv": 1e-6, "µv": 1e-6, "kv": 1e3}
@@ -36,8 +38,10 @@ class Channel:
     seconds: float
 
 
-def is_record(header: Sequence[Sequence[str]], *, has_step: bool) -> bool:
+def is_record(header: Sequence[Sequence[str]], *, has_step: bool, asked: Mapping[str, str]) -> bool:
     """Tell a time record from a swept table: it has times or a sample interval, no frequencies."""
+    if TIME in asked:
+        return True
     names = [split_name(cell)[0] for cell in (header[0] if header else ())]
     if any(kind_of(name) == "frequency" for name in names):
         return False
@@ -52,13 +56,19 @@ def find_channels(
     Args:
         header: Rows of words above the numbers, top first.
         width: Columns of the block.
-        asked: Which column is what, by ``"input"``, ``"output"``: names, or places from 1; and
-            the unit of ``"time"``.
+        asked: Which column is what, by ``"input"``, ``"output"``: names, or places of the signal
+            from 1; ``TIME``: name, or place of the column from 1; ``TIME_UNIT``.
 
     Raises:
         CaptureError: It is not clear which column is which.
     """
-    channels = _channels(_named(header, width), asked)
+    named = _named(header, width)
+    if TIME in asked:
+        named = [
+            ("time" if asked[TIME].lower() in {name.lower(), str(place)} else name, unit)
+            for place, (name, unit) in enumerate(named, start=1)
+        ]
+    channels = _channels(named, asked)
     sides: dict[Side, Channel] = {}
     for side in ("input", "output"):
         wanted = asked.get(side)
@@ -103,7 +113,7 @@ def _channels(named: Sequence[tuple[str, str]], asked: Mapping[str, str]) -> lis
         if _COUNT.fullmatch(name):
             continue
         if _TIME.fullmatch(name):
-            time_place, seconds = place, _seconds(asked.get("time") or unit, name)
+            time_place, seconds = place, _seconds(asked.get(TIME_UNIT) or unit, name)
             continue
         stem = _EXTREME.sub("", name).strip()
         if channels and stem != name and channels[-1].name == stem:

@@ -9,7 +9,7 @@ from pathlib import Path
 import numpy as np
 
 from benchlog.capture.block import Block, find_block
-from benchlog.capture.channels import is_record
+from benchlog.capture.channels import TIME_UNIT, is_record
 from benchlog.capture.columns import find_columns
 from benchlog.capture.preamble import read_preamble
 from benchlog.capture.stream import STREAM_FROM_BYTES, stream_record
@@ -70,6 +70,13 @@ class Told:
     columns: Mapping[str, str] = field(default_factory=dict)
     frequency_hz: float | None = None
     progress: Callable[[float], None] | None = None
+
+    def about_channels(self) -> dict[str, str]:
+        """Return what is said of a time record's columns."""
+        said = dict(self.columns)
+        if "time" in self.units:
+            said[TIME_UNIT] = self.units["time"]
+        return said
 
 
 def read_capture(
@@ -156,8 +163,9 @@ def _read(path: Path, told: Told, design: Design | None) -> "Capture | ReadRecor
         has_step = read_preamble(block.preamble, block.decimal).step_s is not None
         understood = _understood(text.encoding, block)
         sha256 = hashlib.sha256(data).hexdigest()
-        if is_record(block.header, has_step=has_step):
-            records = read_records(block, asked={**told.units, **told.columns})
+        asked = told.about_channels()
+        if is_record(block.header, has_step=has_step, asked=asked):
+            records = read_records(block, asked=asked)
             points = tuple(point_of(record, told.frequency_hz) for record in records)
             return ReadRecord(path=path, sha256=sha256, understood=understood, points=points)
         columns = find_columns(block.header, len(block.rows[0]), asked=told.units)
@@ -176,7 +184,7 @@ def _read(path: Path, told: Told, design: Design | None) -> "Capture | ReadRecor
 
 def _read_large(path: Path, told: Told) -> ReadRecord:
     try:
-        found = stream_record(path, asked={**told.units, **told.columns}, progress=told.progress)
+        found = stream_record(path, asked=told.about_channels(), progress=told.progress)
     except CaptureError as error:
         raise error.at(str(path)) from error
     understood = _understood(found.encoding, found.block)

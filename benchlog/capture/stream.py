@@ -65,7 +65,7 @@ def stream_record(
             raise _too_large("it is in neither UTF-8 nor Latin-1")
         block = find_block(text)
         told = read_preamble(block.preamble, block.decimal)
-        if not is_record(block.header, has_step=told.step_s is not None):
+        if not is_record(block.header, has_step=told.step_s is not None, asked=asked):
             raise _too_large("it is no time record")
         sides = find_channels(block.header, len(block.rows[0]), asked=asked)
         start = _start_of_row(head, block.first_line)

@@ -52,7 +52,7 @@ if TYPE_CHECKING:
     "columns",
     multiple=True,
     metavar="SIDE=NAME",
-    help="Which channel of a time record is what: input=CH1, output=CH2.",
+    help="Which column of a time record is what: input=CH1, output=CH2, time=1.",
 )
 @click.option(
     "--frequency", type=HERTZ, metavar="FREQ", help="Frequency of a time record, if it is known."

@@ -142,3 +142,37 @@ def test_samples_missing_in_the_middle_are_refused(tmp_path: Path) -> None:
 
     assert refused.value.what == "samples are missing in the middle of the record"
     assert "line 501" in str(refused.value.where)
+
+
+def test_preamble_beside_the_samples(tmp_path: Path) -> None:
+    """Keys in the first columns of the same rows, blank once they end; the times are told."""
+    keys = ["Record length,1000,,", "Operator,nobody,,", "Date,2026-01-01,,"]
+    rows = zip(*samples(1e3), strict=True)
+    lines = [
+        f"{keys[place] if place < len(keys) else ',,,'}{t:.9e},{a:.7e},{b:.7e}"
+        for place, (t, a, b) in enumerate(rows)
+    ]
+    file = tmp_path / "capture.csv"
+    file.write_text("\n".join(lines) + "\n")
+
+    told = Told(columns={"time": "1", "input": "1", "output": "2"})
+    (capture,) = inspect_captures([file], told=told)
+
+    assert capture.curve.frequency_hz[0] == pytest.approx(1e3, rel=1e-6)
+    assert capture.curve.gain[0] == pytest.approx(abs(board(1e3)), rel=1e-4)
+
+
+def test_blank_line_between_names_and_samples(tmp_path: Path) -> None:
+    """And units in a row of their own, and times in another unit by the option."""
+    text = DIALECTS["decimal_comma"](samples(1e3))
+    spaced = text.replace("(us);(mV);(V)\n", "(us);(mV);(V)\n\n")
+    file = tmp_path / "capture.csv"
+    file.write_text(spaced, encoding="utf-8")
+    bare = tmp_path / "bare.csv"
+    bare.write_text(text.replace("(us);", ";"), encoding="utf-8")
+
+    (first,) = inspect_captures([file])
+    (second,) = inspect_captures([bare], told=Told(units={"time": "us"}))
+
+    assert first.curve.frequency_hz == pytest.approx([1e3], rel=1e-6)
+    assert second.curve.frequency_hz == pytest.approx([1e3], rel=1e-6)
