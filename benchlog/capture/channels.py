@@ -81,13 +81,14 @@ def find_channels(
         if len(fitting) == 1:
             sides[side] = fitting[0]
     if len(sides) < 2 or sides["input"] is sides["output"]:
-        names = ", ".join(channel.name for channel in channels)
+        names = [channel.name for channel in channels]
+        if len(set(names)) < len(names) or len(names) < 2:
+            names = [str(place) for place in range(1, max(len(names), 2) + 1)]
         raise CaptureError(
             "it is not clear which channel is the board's input and which its output",
-            where=f"header: {names or 'none'}",
+            where=f"header: {', '.join(channel.name for channel in channels) or 'none'}",
             expected="channels named input and output, or told apart by you",
-            hint=f"say it: --column input={channels[0].name if channels else 'CH1'}"
-            f" --column output={channels[-1].name if channels else 'CH2'}",
+            hint=f"say it: --column input={names[0]} --column output={names[-1]}",
         )
     return sides
 

@@ -176,3 +176,17 @@ def test_blank_line_between_names_and_samples(tmp_path: Path) -> None:
 
     assert first.curve.frequency_hz == pytest.approx([1e3], rel=1e-6)
     assert second.curve.frequency_hz == pytest.approx([1e3], rel=1e-6)
+
+
+def test_channels_of_one_name_are_told_by_place(tmp_path: Path) -> None:
+    """Numbered channels over a row of units."""
+    lines = plain(samples(1e3)).splitlines()
+    file = tmp_path / "capture.csv"
+    file.write_text("\n".join(["x-axis,1,2", "second,Volt,Volt", *lines[1:]]) + "\n")
+
+    with pytest.raises(CaptureError) as refused:
+        inspect_captures([file])
+    (capture,) = inspect_captures([file], told=Told(columns={"input": "1", "output": "2"}))
+
+    assert refused.value.hint == "say it: --column input=1 --column output=2"
+    assert capture.curve.gain[0] == pytest.approx(abs(board(1e3)), rel=1e-4)
