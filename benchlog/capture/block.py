@@ -1,25 +1,35 @@
 """Find the numbers in a text: delimiter and decimal mark, header, block, what stands around it.
 
 Every pair of delimiter and decimal mark is tried on the whole text; the pair that makes the
-longest run of rows that are all numbers wins.  Nothing is skipped by a fixed count.
+longest run of rows that are all numbers wins.  Nothing is skipped by a fixed count, and no row
+of numbers is left out without a word.
 """
 
-import csv
 import math
 import re
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 from benchlog.capture.cells import Decimal, number
+from benchlog.capture.header import Header, find_header, names_a_cause
+from benchlog.capture.refusal import broken_table, no_table, refuse_thousands
+from benchlog.capture.rows import (
+    FEWEST_ROWS,
+    Dialect,
+    Run,
+    longest_run,
+    longest_run_beside,
+    row_of,
+    split,
+    trimmed,
+)
 from benchlog.capture.text import Text
 from benchlog.errors import CaptureError
 
 _DELIMITERS = (",", ";", "\t", "|", " ")
 _NAMES = {",": "comma", ";": "semicolon", "\t": "tab", "|": "bar", " ": "blanks"}
 _HINT = re.compile(r'"?sep=(.)"?', re.IGNORECASE)
-_FEWEST_ROWS = 3
-_MOST_HEADER_ROWS = 2
-_COMMENT = "#;%!"
+_CUT = re.compile(r"[+-]?[0-9]*[.,]?[0-9]*([eEdD][+-]?[0-9]*)?")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -27,23 +37,30 @@ class Block:
     """A table of numbers found in a text.
 
     Attributes:
-        rows: Numbers, NaN for states; all rows have the same length.
-        first_line: Line of the first row, counted from 1.
-        header: Rows of words above the block, nearest last, padded to its width.
-        preamble: Lines above the header.
+        rows: Numbers, NaN for states and empty cells; all rows have the same length.
+        lines: Line of each row, counted from 1.
+        header: Rows of words above the block, top first, as wide as it.
+        preamble: What stands above the header, and beside the numbers.
         footer: Lines below the block that are not blank.
         delimiter, decimal: What separates cells, and the decimal mark.
+        beside: Whether words stand beside the numbers, so that its columns are not the file's.
         notes: What was passed over, for people.
     """
 
     rows: tuple[tuple[float, ...], ...]
-    first_line: int
+    lines: tuple[int, ...]
     header: tuple[tuple[str, ...], ...]
     preamble: tuple[str, ...]
     footer: tuple[str, ...]
     delimiter: str
     decimal: Decimal
+    beside: bool
     notes: tuple[str, ...]
+
+    @property
+    def first_line(self) -> int:
+        """Line of the first row, counted from 1."""
+        return self.lines[0]
 
     @property
     def delimiter_name(self) -> str:
@@ -52,84 +69,55 @@ class Block:
 
 
 @dataclass(frozen=True, slots=True)
-class _Run:
-    """Consecutive lines that are rows of numbers of one width."""
-
-    first: int
-    rows: list[tuple[float, ...]]
+class _Found:
+    run: Run
+    dialect: Dialect
+    header: Header
 
 
 def find_block(text: Text) -> Block:
     """Find the longest table of numbers.
 
     Raises:
-        CaptureError: There is none, or two readings of the text are equally good and differ.
+        CaptureError: There is none, it is broken in the middle, or two readings of the text are
+            equally good and differ.
     """
-    told = _told_delimiter(text.lines)
-    found: list[tuple[_Run, str, Decimal]] = []
-    for delimiter in (told,) if told else _DELIMITERS:
-        for decimal in _decimals(delimiter):
-            run = _longest_run(text.lines, delimiter, decimal)
-            if run is not None:
-                found.append((run, delimiter, decimal))
-    if not found:
-        found = _beside_preamble(text.lines)
-    if not found:
-        raise CaptureError(
-            "no table of numbers was found",
-            expected=f"at least {_FEWEST_ROWS} rows with two or more numbers each",
-            hint="open the file in an editor: is it the one you meant?",
-        )
-    best = max(found, key=_score)
-    _refuse_ambiguous(best, found)
-    return _block(text, best)
+    lines = text.lines
+    dialects = _dialects(lines)
+    found = _best([_found(lines, one, longest_run) for one in dialects])
+    if found is None or not found.header.rows:
+        looks = [_found(lines, one, longest_run_beside) for one in dialects]
+        beside = _best([one for one in looks if one is not None and _is_table(lines, one)])
+        if beside is not None and (found is None or len(beside.run.rows) >= len(found.run.rows)):
+            found = beside
+    if found is None:
+        raise no_table(lines, told=_told_delimiter(lines))
+    return _block(lines, found)
 
 
-def _beside_preamble(lines: Sequence[str]) -> list[tuple[_Run, str, Decimal]]:
-    """Find numbers that stand beside the preamble: in the last columns of every line."""
-    found: list[tuple[_Run, str, Decimal]] = []
-    for delimiter in (",", ";", "\t"):
-        for decimal in _decimals(delimiter):
-            cut = [delimiter.join(_numbers_at_end(line, delimiter, decimal)) for line in lines]
-            run = _longest_run(cut, delimiter, decimal)
-            if run is not None:
-                found.append((run, delimiter, decimal))
-    return found
+def _found(
+    lines: Sequence[str], dialect: Dialect, look: Callable[[Sequence[str], Dialect], Run | None]
+) -> _Found | None:
+    run = look(lines, dialect)
+    return None if run is None else _Found(run, dialect, find_header(lines, dialect, run))
 
 
-def _numbers_at_end(line: str, delimiter: str, decimal: Decimal) -> list[str]:
-    """Return the cells at the end of a line that are numbers, behind a blank or a word."""
-    cells = _cells(line, delimiter)
-    place = len(cells)
-    while place > 0 and number(cells[place - 1], decimal) is not None:
-        place -= 1
-    return cells[place:] if place > 0 else []
+def _is_table(lines: Sequence[str], found: _Found) -> bool:
+    """Tell a table with words beside it from numbers that happen to stand among words."""
+    return bool(found.header.rows) or 2 * len(_beside(lines, found)) < len(found.run.rows)
 
 
-def _score(candidate: tuple[_Run, str, Decimal]) -> tuple[int, int]:
-    run, _, _ = candidate
-    return len(run.rows), len(run.rows[0])
-
-
-def _refuse_ambiguous(
-    best: tuple[_Run, str, Decimal], found: Sequence[tuple[_Run, str, Decimal]]
-) -> None:
-    for other in found:
-        if _score(other) == _score(best) and not _same(other[0].rows, best[0].rows):
-            raise CaptureError(
-                f"the numbers can be read in two ways: {_NAMES[best[1]]} with decimal"
-                f" {best[2]!r}, or {_NAMES[other[1]]} with decimal {other[2]!r}",
-                expected="one way to read them",
-                hint="put a line sep=; (or sep=,) at the top of the file",
-            )
-
-
-def _same(one: list[tuple[float, ...]], other: list[tuple[float, ...]]) -> bool:
-    return all(
-        a == b or (math.isnan(a) and math.isnan(b))
-        for left, right in zip(one, other, strict=True)
-        for a, b in zip(left, right, strict=True)
-    )
+def _dialects(lines: Sequence[str]) -> list[Dialect]:
+    """Return what is worth trying: delimiters that occur, decimal commas where they can be."""
+    told = _told_delimiter(lines)
+    occur = [one for one in _DELIMITERS if any(one in line for line in lines)]
+    dialects: list[Dialect] = []
+    for delimiter in (told,) if told else occur:
+        dialects.append(Dialect(delimiter=delimiter, decimal="."))
+        # Between commas, a number with a decimal comma stands in quotes.
+        if delimiter != "," or any('"' in line for line in lines):
+            dialects.append(Dialect(delimiter=delimiter, decimal=","))
+    return dialects
 
 
 def _told_delimiter(lines: Sequence[str]) -> str | None:
@@ -138,102 +126,163 @@ def _told_delimiter(lines: Sequence[str]) -> str | None:
     return found[1] if found and found[1] in _DELIMITERS else None
 
 
-def _decimals(delimiter: str) -> tuple[Decimal, ...]:
-    return (".",) if delimiter == "," else (".", ",")
+def _best(looks: Sequence[_Found | None]) -> _Found | None:
+    """Return the reading with the longest run, and the wider one of two equally long ones.
 
-
-def _longest_run(lines: Sequence[str], delimiter: str, decimal: Decimal) -> _Run | None:
-    best: _Run | None = None
-    for run in _runs(lines, delimiter, decimal):
-        if best is None or len(run.rows) > len(best.rows):
-            best = run
-    return best if best is not None and len(best.rows) >= _FEWEST_ROWS else None
-
-
-def _runs(lines: Sequence[str], delimiter: str, decimal: Decimal) -> Iterator[_Run]:
-    run: _Run | None = None
-    for place, line in enumerate(lines):
-        row = _row(line, delimiter, decimal)
-        if row is not None and run is not None and len(row) == len(run.rows[0]):
-            run.rows.append(row)
-            continue
-        if run is not None:
-            yield run
-        run = None if row is None else _Run(place, [row])
-    if run is not None:
-        yield run
-
-
-def _row(line: str, delimiter: str, decimal: Decimal) -> tuple[float, ...] | None:
-    """Return a line's numbers, or None where it is no row of at least two numbers."""
-    cells = _cells(line, delimiter)
-    if len(cells) < 2:
+    Raises:
+        CaptureError: Two readings are equally good and differ.
+    """
+    found = [one for one in looks if one is not None]
+    if not found:
         return None
-    values = [number(cell, decimal) for cell in cells]
-    if any(value is None for value in values):
-        return None
-    known = [value for value in values if value is not None]
-    return tuple(known) if any(math.isfinite(value) for value in known) else None
+    best = max(found, key=lambda one: _score(one.run))
+    for other in found:
+        if _score(other.run) == _score(best.run) and not _same(other.run.rows, best.run.rows):
+            one, two = (
+                f"{_NAMES[dialect.delimiter]} with decimal {dialect.decimal!r}"
+                for dialect in (best.dialect, other.dialect)
+            )
+            raise CaptureError(
+                f"the numbers can be read in two ways: {one}, or {two}",
+                where=f"line {best.run.lines[0] + 1}",
+                expected="one way to read them",
+                hint="put a line sep=; (or sep=,) at the top of the file",
+            )
+    return best
 
 
-def _cells(line: str, delimiter: str) -> list[str]:
-    """Split a line; empty cells at its end come from a trailing delimiter and are dropped."""
-    if delimiter == " ":
-        return line.split()
-    try:
-        cells = next(csv.reader([line], delimiter=delimiter), [])
-    except csv.Error:
-        return []
-    while cells and not cells[-1].strip():
-        cells.pop()
-    return cells
+def _score(run: Run) -> tuple[int, int]:
+    return len(run.rows), len(run.columns)
 
 
-def _block(text: Text, found: tuple[_Run, str, Decimal]) -> Block:
-    run, delimiter, decimal = found
-    first, after = run.first, run.first + len(run.rows)
-    header = _header(text.lines[:first], delimiter, len(run.rows[0]))
-    above = text.lines[: first - len(header)]
-    footer = [line for line in text.lines[after:] if line.strip()]
-    notes = []
-    if footer and _is_cut_row(footer[0], delimiter, decimal):
-        notes.append(f"line {after + 1} is cut off and was left out: {footer[0]!r}")
-        footer = footer[1:]
+def _same(one: Sequence[Sequence[float]], other: Sequence[Sequence[float]]) -> bool:
+    return all(
+        a == b or (math.isnan(a) and math.isnan(b))
+        for left, right in zip(one, other, strict=True)
+        for a, b in zip(left, right, strict=True)
+    )
+
+
+def _block(lines: Sequence[str], found: _Found) -> Block:
+    run, dialect = found.run, found.dialect
+    refuse_thousands(lines, run, dialect)
+    places, rows, notes = _counted_off(run)
+    if _is_cut_off(lines, places, found):
+        places, rows = places[:-1], rows[:-1]
+    if run.beside:
+        notes.append("words beside the numbers were taken for preamble or remarks")
+    after = places[-1] + 1
+    _refuse_broken(lines, found, after)
+    below = [(place, lines[place]) for place in range(after, len(lines)) if lines[place].strip()]
+    cut = _cut_lines(below, found)
+    notes += [f"line {place + 1} is cut off and was left out: {line!r}" for place, line in cut]
+    footer = [line for _, line in below[len(cut) :]]
     if footer:
-        notes.append(f"{len(footer)} lines below the table were passed over")
+        lines_are = "1 line" if len(footer) == 1 else f"{len(footer)} lines"
+        notes.append(f"{lines_are} below the table passed over, from: {footer[0][:60]!r}")
+    above = [line for line in lines[: found.header.first] if line.strip()]
+    if above and _HINT.fullmatch(above[0].strip("\ufeff \t")):
+        above = above[1:]
     return Block(
-        rows=tuple(run.rows),
-        first_line=first + 1,
-        header=header,
-        preamble=tuple(line for line in above if line.strip() and not _HINT.fullmatch(line)),
+        rows=tuple(rows),
+        lines=tuple(place + 1 for place in places),
+        header=found.header.rows,
+        preamble=(*above, *(_beside(lines, found) if run.beside else ())),
         footer=tuple(footer),
-        delimiter=delimiter,
-        decimal=decimal,
+        delimiter=dialect.delimiter,
+        decimal=dialect.decimal,
+        beside=run.beside,
         notes=tuple(notes),
     )
 
 
-def _header(above: Sequence[str], delimiter: str, width: int) -> tuple[tuple[str, ...], ...]:
-    """Return the rows of words directly above the block, top first."""
-    rows: list[tuple[str, ...]] = []
-    for line in reversed(above):
-        if not line.strip() and not rows:
-            # A blank line may stand between names and numbers.
-            continue
-        cells = [
-            cell.strip()
-            for cell in _cells(line.lstrip(_COMMENT.replace(delimiter, "") + " "), delimiter)
-        ]
-        if len(cells) != width or len(rows) == _MOST_HEADER_ROWS:
-            break
-        if any(number(cell, ".") is not None for cell in cells):
-            # A line of the preamble that happens to have as many cells.
-            break
-        rows.insert(0, tuple(cells))
-    return tuple(rows)
+def _counted_off(run: Run) -> tuple[list[int], list[tuple[float, ...]], list[str]]:
+    """Leave out a first row that only counts the rows below it."""
+    places, rows = list(run.lines), list(run.rows)
+    counted = len(rows) - 1
+    if counted >= FEWEST_ROWS and all(value == counted for value in rows[0]):
+        note = f"line {places[0] + 1} counts the rows and was left out"
+        return places[1:], rows[1:], [note]
+    return places, rows, []
 
 
-def _is_cut_row(line: str, delimiter: str, decimal: Decimal) -> bool:
-    """Tell a last line that a stick was pulled on: it begins with a number and then breaks off."""
-    cells = _cells(line, delimiter)
-    return bool(cells) and number(cells[0], decimal) is not None
+def _is_cut_off(lines: Sequence[str], places: Sequence[int], found: _Found) -> bool:
+    """Tell whether the last row misses cells which the row before it has."""
+    if found.run.beside:
+        return False
+    before, last = (
+        len(trimmed(split(lines[place], found.dialect.delimiter))) for place in places[-2:]
+    )
+    return last < before == len(found.run.columns)
+
+
+def _cut_lines(below: Sequence[tuple[int, str]], found: _Found) -> list[tuple[int, str]]:
+    """Return the last line where a stick was pulled: it begins as a row and then breaks off.
+
+    Raises:
+        CaptureError: More than one line is like that.
+    """
+    cut = []
+    for place, line in below:
+        cells = trimmed(split(line, found.dialect.delimiter))
+        begins = bool(cells) and number(cells[0], found.dialect.decimal) is not None
+        partial = len(cells) == 1 and (place, line) == below[-1] and _CUT.fullmatch(line.strip())
+        if not begins and not partial:
+            break
+        cut.append((place, line))
+    if len(cut) > 1:
+        first, last = cut[0][0] + 1, cut[-1][0] + 1
+        raise CaptureError(
+            f"{len(cut)} lines below the table begin like rows and are none",
+            where=f"line {first} to line {last}",
+            expected="at most one line that is cut off, at the end of the file",
+        )
+    return cut
+
+
+def _refuse_broken(lines: Sequence[str], found: _Found, after: int) -> None:
+    """Refuse a table that goes on behind words, or that words without a header cut in two."""
+    run, dialect = found.run, found.dialect
+
+    def is_row(place: int) -> bool:
+        return row_of(lines[place], dialect, run) is not None
+
+    if any(is_row(place) for place in range(after, len(lines))):
+        # A row that was taken for cut off breaks nothing by itself.
+        broken = (place for place in range(after, len(lines)) if not is_row(place))
+        at = next((place for place in broken if lines[place].strip()), None)
+        if at is not None and any(is_row(place) for place in range(at, len(lines))):
+            raise broken_table(lines[at], at, dialect, width=len(run.columns))
+    if not found.header.rows:
+        _refuse_misfit(lines, found)
+    above = [place for place in range(run.lines[0]) if is_row(place)]
+    if len(above) >= FEWEST_ROWS or (above and not found.header.rows):
+        behind = range(above[-1] + 1, run.lines[0])
+        at = next(place for place in behind if lines[place].strip())
+        raise broken_table(lines[at], at, dialect, width=len(run.columns))
+
+
+def _refuse_misfit(lines: Sequence[str], found: _Found) -> None:
+    """Refuse names right above the numbers that are more or fewer than the columns."""
+    run = found.run
+    at = next((place for place in range(run.lines[0] - 1, -1, -1) if lines[place].strip()), None)
+    cells = [] if at is None else trimmed(split(lines[at], found.dialect.delimiter))
+    if at is not None and len(cells) != len(run.columns) and names_a_cause(cells):
+        raise CaptureError(
+            f"the line above the numbers has {len(cells)} cells, and they have"
+            f" {len(run.columns)} columns",
+            where=f"line {at + 1}",
+            expected="a name for each column",
+            hint="are there decimal commas between commas? Export with semicolons",
+        )
+
+
+def _beside(lines: Sequence[str], found: _Found) -> tuple[str, ...]:
+    """Return the words beside the numbers, line by line, with the delimiter between them."""
+    delimiter = found.dialect.delimiter
+    words = []
+    for line in lines[found.header.first : found.run.lines[-1] + 1]:
+        cells = split(line, delimiter)
+        kept = [cell for place, cell in enumerate(cells) if place not in found.run.columns]
+        words.append(delimiter.join(trimmed(kept)))
+    return tuple(word for word in words if word.strip())

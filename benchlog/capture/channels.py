@@ -45,7 +45,17 @@ def is_record(header: Sequence[Sequence[str]], *, has_step: bool, asked: Mapping
     names = [split_name(cell)[0] for cell in (header[0] if header else ())]
     if any(kind_of(name) == "frequency" for name in names):
         return False
-    return has_step or any(_TIME.fullmatch(name) for name in names)
+    return has_step or any(map(is_time, names))
+
+
+def is_time(name: str) -> bool:
+    """Tell whether a column of this name holds times."""
+    return _TIME.fullmatch(name) is not None
+
+
+def is_time_or_volts(unit: str) -> bool:
+    """Tell whether a word is a unit of time or of voltage."""
+    return unit.lower() in _SECONDS or unit.lower() in _VOLTS
 
 
 def find_channels(

@@ -9,9 +9,12 @@ from benchlog.errors import CaptureError
 
 Kind: TypeAlias = Literal["frequency", "gain", "input", "output", "phase", "u_gain"]
 
+# log10(f), log10 f, log10(f/Hz), log frequency: of hertz and of no other unit.
+_LOG_FREQUENCY = r"(log|log10|lg)( ?\( ?f\w* ?([/\[(] ?hz ?[\])]?)? ?\)| f\w*)"
+
 KINDS: dict[Kind, tuple[str, ...]] = {
     "u_gain": (r"u_gain\w*", r"u\(gain\)", r"gain uncertainty"),
-    "frequency": (r"freq\w*", r"f", r"hz", r"log10 ?\(?f\w*\)?", r"log\w* freq\w*"),
+    "frequency": (r"freq\w*", r"f", r"hz", _LOG_FREQUENCY),
     "gain": (r"gain\w*", r"mag\w*", r"ratio", r"amplification", r"\|?h\|?", r"a_?v", r"verst\w+"),
     "input": (r"in", r"in_\w+", r"inp\w*", r"v_?in\w*", r"u_?in\w*", r"eingang\w*", r"vi", r"ein"),
     "output": (
@@ -35,6 +38,10 @@ _ALIKE = {
 }  # fmt: skip
 _IN_BRACKETS = re.compile(r"^(.*?)\s*[\(\[]\s*([^\)\]]+?)\s*[\)\]]\s*$")
 _BEHIND_SLASH = re.compile(r"^(.*?)\s+/\s+(\S+)$")
+_BEHIND_BLANK = re.compile(
+    r"^(.*\S)\s+(?:in\s+)?"
+    r"(Hz|kHz|MHz|GHz|V/V|dB|dBV|dBu|dBm|m?V(?:rms|pp|pk)?|deg|°|rad|%|[mun]?s)$"
+)
 _HOUSE = re.compile(r"^(.*)_(hz|khz|mhz|db|vrms|vpp|vpk|deg|rad|rel|v|dbv|dbu|dbm)$", re.IGNORECASE)
 
 
@@ -105,11 +112,13 @@ def _named(
 
 
 def split_name(cell: str) -> tuple[str, str]:
-    """Split ``"Gain (dB)"``, ``"f / Hz"`` and ``"gain_db"`` into name and unit."""
-    for form in (_IN_BRACKETS, _BEHIND_SLASH):
+    """Split ``"Gain (dB)"``, ``"f / Hz"`` and ``"Gain in dB"`` into name and unit."""
+    if re.match(r"(log|log10|lg)\b", cell.strip(), re.IGNORECASE) and kind_of(cell):
+        return cell.strip(), ""
+    for form in (_IN_BRACKETS, _BEHIND_SLASH, _BEHIND_BLANK):
         found = form.match(cell)
         if found and found[1]:
-            return found[1].strip(), found[2].strip()
+            return found[1].rstrip(" /").strip(), found[2].strip()
     return cell.strip(), ""
 
 
@@ -128,7 +137,7 @@ def _unit(kind: Kind, name: str, told: str, *, asked: Mapping[str, str], house: 
     found = _HOUSE.match(name)
     if not given and found:
         given = found[2]
-    if kind == "frequency" and name.lower().startswith("log"):
+    if kind == "frequency" and name.lower().startswith(("log", "lg")):
         given = "log10(Hz)"
     if not given and kind == "gain" and house and name.lower() == "gain":
         # This program's own names say it: gain is V/V.
@@ -154,6 +163,11 @@ def _known(kind: Kind, given: str) -> str | None:
     if kind == "frequency" and text == "mHz":
         return None
     return next(iter(exact or loose), None)
+
+
+def is_unit(text: str) -> bool:
+    """Tell whether a word is a unit of some column."""
+    return any(_known(kind, text) is not None for kind in UNITS)
 
 
 def _check_complete(columns: Mapping[Kind, Column], named: Sequence[tuple[str, str]]) -> None:

@@ -64,6 +64,8 @@ def stream_record(
         if text.encoding not in {"utf-8", "latin-1"}:
             raise _too_large("it is in neither UTF-8 nor Latin-1")
         block = find_block(text)
+        if block.beside:
+            raise _too_large("words stand beside its numbers")
         told = read_preamble(block.preamble, block.decimal)
         if not is_record(block.header, has_step=told.step_s is not None, asked=asked):
             raise _too_large("it is no time record")

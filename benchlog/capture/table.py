@@ -22,6 +22,8 @@ _VRMS = {
 }
 _DB_REFERENCE_VRMS = {"dBV": 1.0, "dBu": math.sqrt(0.6), "dBm": math.sqrt(0.05)}
 
+_WIDEST_RAD = 7.0
+
 
 class Swept(NamedTuple):
     """A curve, and what was done to the rows to get it."""
@@ -43,15 +45,20 @@ def swept_curve(block: Block, columns: tuple[Column, ...]) -> Swept:
     whole = np.all(np.isfinite(np.stack(list(values.values()))), axis=0)
     notes = []
     if not whole.all():
-        notes.append(f"{int((~whole).sum())} rows hold no number (overload, NaN) and are left out")
-    lines = block.first_line + np.flatnonzero(whole)
+        notes.append(_left_out(int((~whole).sum())))
+    lines = np.asarray(block.lines, dtype=np.int64)[whole]
     if not whole.any():
-        raise CaptureError("no row holds numbers in all columns that are needed")
+        raise CaptureError(
+            "no row holds numbers in all columns that are needed",
+            where=f"line {block.lines[0]} to line {block.lines[-1]}",
+            expected="numbers, not overloads, for " + ", ".join(column.name for column in columns),
+        )
     picked = {kind: column[whole] for kind, column in values.items()}
     frequency_hz = _frequencies(picked["frequency"], by_kind["frequency"], lines)
     gain = _gains(picked, by_kind, lines)
     phase_deg = _phase(picked, by_kind)
     u_gain_rel = _noise(picked, by_kind, lines)
+    notes += _degrees_for_radians(phase_deg, by_kind)
     order = np.argsort(frequency_hz, kind="stable")
     if np.any(np.diff(order) < 0):
         notes.append("the rows were not in rising frequency and were sorted")
@@ -66,6 +73,11 @@ def swept_curve(block: Block, columns: tuple[Column, ...]) -> Swept:
     assert gains is not None
     curve = GainCurve(frequencies, gains, phases, noises)
     return Swept(curve, tuple(notes))
+
+
+def _left_out(count: int) -> str:
+    rows = "1 row holds no number" if count == 1 else f"{count} rows hold no number"
+    return f"{rows} (overload, empty) and {'is' if count == 1 else 'are'} left out"
 
 
 def _frequencies(values: FloatArray, column: Column, lines: npt.NDArray[np.int64]) -> FloatArray:
@@ -136,6 +148,16 @@ def _phase(picked: Mapping[Kind, FloatArray], by_kind: Mapping[Kind, Column]) ->
         return None
     values = picked["phase"]
     return np.degrees(values) if by_kind["phase"].unit == "rad" else values
+
+
+def _degrees_for_radians(phase_deg: FloatArray | None, by_kind: Mapping[Kind, Column]) -> list[str]:
+    """Note a phase in radians that turns further than a board can."""
+    if phase_deg is None or by_kind["phase"].unit != "rad":
+        return []
+    span_rad = float(np.radians(np.ptp(phase_deg)))
+    if span_rad <= _WIDEST_RAD:
+        return []
+    return [f"the phase spans {span_rad:.3g} rad: are these degrees? It was kept as read"]
 
 
 def _noise(

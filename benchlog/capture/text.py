@@ -38,6 +38,8 @@ def decode(data: bytes) -> Text:
             text = body.decode(encoding, errors="replace")
         else:
             encoding, text = "latin-1", body.decode("latin-1")
+    # Ctrl-Z ended text files once, and some instruments still write it; others fill up with NULs.
+    text = text.split("\x1a", 1)[0].rstrip("\x00")
     sample = text[:_SAMPLE_BYTES]
     if sum(ord(sign) in _CONTROL for sign in sample) > _MOST_CONTROL * len(sample):
         raise CaptureError(
@@ -45,8 +47,7 @@ def decode(data: bytes) -> Text:
             expected="a table of numbers as text, such as CSV",
             hint="export it as CSV from the program that wrote it",
         )
-    # Ctrl-Z ended text files once, and some instruments still write it.
-    lines = text.split("\x1a", 1)[0].replace("\r\n", "\n").replace("\r", "\n").split("\n")
+    lines = text.replace("\r\n", "\n").replace("\r", "\n").split("\n")
     return Text(lines=tuple(lines), encoding=encoding)
 
 

@@ -100,7 +100,7 @@ def read_records(block: Block, *, asked: Mapping[str, str]) -> list[Record]:
         if not whole[first : last + 1].all():
             raise CaptureError(
                 "samples are missing in the middle of the record",
-                where=f"line {block.first_line + first + int(np.argmin(whole[first:]))}",
+                where=f"line {block.lines[first + int(np.argmin(whole[first:]))]}",
                 expected="a number in every row",
             )
         table = table[first : last + 1]

@@ -82,6 +82,96 @@ CASES: dict[str, tuple[bytes, str, str]] = {
         "no row holds numbers in all columns that are needed",
         "",
     ),
+    "words in the middle": (
+        f"frequency_hz,gain\n{ROWS}paused here\n200000,14\n300000,10\n".encode(),
+        "the table is broken by 'paused here'",
+        "line 6",
+    ),
+    "words in the middle, no header": (
+        f"{ROWS}paused here\n200000,14\n300000,10\n".encode(),
+        "the table is broken by 'paused here'",
+        "line 5",
+    ),
+    "misspelt number": (
+        f"frequency_hz,gain\n{ROWS}200000,1x4\n300000,10\n".encode(),
+        "the table is broken by '1x4'",
+        "line 6, column 2",
+    ),
+    "misspelt number above the longer part": (
+        f"frequency_hz,gain\n10,48\n20,4x8\n{ROWS}".encode(),
+        "the table is broken by '4x8'",
+        "line 3, column 2",
+    ),
+    "a cell too many": (
+        f"frequency_hz,gain\n10,48\n20,47,9\n{ROWS}".encode(),
+        "the table is broken by '20,47,9'",
+        "line 3",
+    ),
+    "a cell too few": (
+        f"frequency_hz,gain\n10,48\n20\n{ROWS}".encode(),
+        "the table is broken by '20'",
+        "line 3",
+    ),
+    "two tables": (
+        f"frequency_hz,gain\n{ROWS}\nfrequency_hz,gain\n{ROWS}1e6,3\n".encode(),
+        "the table is broken by 'frequency_hz,gain'",
+        "line 7",
+    ),
+    "two tables, the first is longer": (
+        f"frequency_hz,gain\n{ROWS}1e6,3\n\nfrequency_hz,gain\n{ROWS}".encode(),
+        "the table is broken by 'frequency_hz,gain'",
+        "line 8",
+    ),
+    "several cut rows": (
+        f"frequency_hz,gain\n{ROWS}200000\n300000\n".encode(),
+        "2 lines below the table begin like rows and are none",
+        "line 6 to line 7",
+    ),
+    "units in cells": (
+        b"Frequency,Gain\n100 Hz,33.6 dB\n1 kHz,33.5 dB\n10 kHz,33.1 dB\n",
+        "the cells carry units: '100 Hz'",
+        "line 2",
+    ),
+    "thousands blanks": (
+        b"frequency_hz;gain\n1 000;48\n10 000;47\n100 000;25\n",
+        "'1 000' may hold a thousands mark, which is never guessed",
+        "line 2",
+    ),
+    "thousands marks of two kinds": (
+        b"frequency_hz;gain\n1.000,5;48\n10.000,5;47\n100.000,5;25\n",
+        "'1.000,5' may hold a thousands mark, which is never guessed",
+        "line 2",
+    ),
+    "thousands commas in quotes": (
+        b'frequency_hz,gain\n"1,000",48.5\n"10,000",47.5\n"100,000",25.5\n',
+        "'1,000' may hold a thousands mark, which is never guessed",
+        "line 2",
+    ),
+    "thousands commas in quotes, whole gains": (
+        b'frequency_hz,gain\n"1,000","48"\n"10,000","47"\n"100,000","25"\n',
+        "'1,000' may hold a thousands mark, which is never guessed",
+        "line 2",
+    ),
+    "decimal commas between commas": (
+        b"frequency_hz,gain\n100,5,48,1\n1000,5,47,9\n10000,5,46,2\n",
+        "the line above the numbers has 2 cells, and they have 4 columns",
+        "line 1",
+    ),
+    "wrong sep line": (
+        f"sep=;\nfrequency_hz,gain\n{ROWS}".encode(),
+        "no table of numbers was found between the delimiters that line 1 names: ';'",
+        "line 1",
+    ),
+    "two ways to read": (
+        b"frequency_hz ,gain\n100 ,48\n1000 ,47\n10000 ,46\n",
+        "the numbers can be read in two ways: comma with decimal '.', or blanks with decimal ','",
+        "line 2",
+    ),
+    "logarithm of another unit": (
+        b"log10(f/kHz),gain_db\n2,48\n3,47\n4,46\n",
+        "there is no frequency column",
+        "header",
+    ),
 }
 
 
@@ -98,6 +188,7 @@ def test_one_error_with_place_and_expectation(tmp_path: Path, case: str) -> None
     assert refused.value.what == what
     assert str(refused.value.where).startswith(str(file))
     assert where in str(refused.value.where)
+    assert refused.value.expected
 
 
 def test_missing_file_and_empty_folder(tmp_path: Path) -> None:
