@@ -93,8 +93,16 @@ def read_records(block: Block, *, asked: Mapping[str, str]) -> list[Record]:
     told = read_preamble(block.preamble, block.decimal)
     sides = find_channels(block.header, len(block.rows[0]), asked=asked)
     table = np.array(block.rows, dtype=float)
-    whole = np.all(np.isfinite(table), axis=1)
+    used = {place for side in SIDES for place in sides[side].places}
+    used |= {place for side in SIDES if (place := sides[side].time_place) is not None}
+    whole = np.all(np.isfinite(table[:, sorted(used)]), axis=1)
     notes = []
+    if not whole.any():
+        raise CaptureError(
+            "no row holds numbers for the times and both channels",
+            where=f"line {block.lines[0]} to line {block.lines[-1]}",
+            expected="samples, not overloads",
+        )
     if not whole.all():
         first, last = np.flatnonzero(whole)[[0, -1]]
         if not whole[first : last + 1].all():

@@ -190,3 +190,29 @@ def test_channels_of_one_name_are_told_by_place(tmp_path: Path) -> None:
 
     assert refused.value.hint == "say it: --column input=1 --column output=2"
     assert capture.curve.gain[0] == pytest.approx(abs(board(1e3)), rel=1e-4)
+
+
+def test_record_of_overloads_is_refused(tmp_path: Path) -> None:
+    """One channel that was never in range."""
+    rows = "".join(f"{n}e-6,{n % 7},OVLD\n" for n in range(30))
+    file = tmp_path / "capture.csv"
+    file.write_text(f"Time (s),Input (V),Output (V)\n{rows}")
+
+    with pytest.raises(CaptureError) as refused:
+        inspect_captures([file])
+
+    assert refused.value.what == "no row holds numbers for the times and both channels"
+    assert str(refused.value.where).endswith("line 2 to line 31")
+
+
+def test_overloads_of_a_channel_that_is_not_used_do_not_matter(tmp_path: Path) -> None:
+    """A third channel, out of range now and then."""
+    lines = plain(samples(1e3)).splitlines()
+    third = [f"{line},{'OVLD' if place % 3 else place}" for place, line in enumerate(lines[1:])]
+    file = tmp_path / "capture.csv"
+    file.write_text("\n".join([f"{lines[0]},Supply (V)", *third]))
+
+    (capture,) = inspect_captures([file])
+
+    assert capture.notes == ()
+    assert capture.curve.gain[0] == pytest.approx(abs(board(1e3)), rel=1e-4)
