@@ -4,7 +4,9 @@ from pathlib import Path
 
 import pytest
 
-from benchlog.capture.read import Capture, inspect_captures
+from benchlog.capture.read import Capture, Told, inspect_captures
+from benchlog.errors import CaptureError
+from tests.fakes.records import board, plain, samples
 
 ROWS = "100,48\n1000,47.9\n10000,47\n100000,25\n"
 KEYED = "Operator,nobody,,100,48\nDate,2026-01-01,,1000,47.9\n,,,10000,47\n,,,100000,25\n"
@@ -109,8 +111,6 @@ def test_states_are_counted_and_never_numbers(tmp_path: Path, token: str, place:
 
 def test_errors_count_lines_of_the_file(tmp_path: Path) -> None:
     """Blank lines between rows count too."""
-    from benchlog.errors import CaptureError
-
     with pytest.raises(CaptureError, match="line 7, column 2"):
         read(tmp_path, "frequency_hz,gain\n\n1,2\n\n2,2\n\n3,0\n4,2\n")
 
@@ -123,3 +123,43 @@ def test_phase_that_spans_too_many_radians_is_noted(tmp_path: Path) -> None:
         "the phase spans 169 rad: are these degrees? It was kept as read",
     )
     assert read(tmp_path, text.replace("-80", "-1").replace("-170", "-3")).notes == ()
+
+
+def test_empty_cell_between_others_is_a_state(tmp_path: Path) -> None:
+    """The row is left out, and the table goes on."""
+    text = "frequency_hz,gain,phase_deg\n1,48,0\n2,,-1\n3,47,-2\n4,46,-3\n"
+
+    capture = read(tmp_path, text)
+
+    assert capture.curve.frequency_hz.tolist() == [1, 3, 4]
+    assert capture.notes == ("1 row holds no number (overload, empty) and is left out",)
+
+
+def test_preamble_above_a_blank_line_is_no_header(tmp_path: Path) -> None:
+    """Two words a line, as many as columns: units that were told hold."""
+    file = tmp_path / "capture.csv"
+    file.write_text(f"Operator,nobody\nDate,today\n\n{ROWS}")
+
+    (capture,) = inspect_captures([file], told=Told(units={"frequency": "kHz", "gain": "dB"}))
+
+    assert capture.curve.frequency_hz[0] == pytest.approx(100e3)
+    assert capture.understood["preamble"] == "2 lines"
+
+
+def test_numbers_among_words_without_names_are_no_table(tmp_path: Path) -> None:
+    """Which of the columns are meant is not guessed, whatever units were told."""
+    file = tmp_path / "capture.csv"
+    file.write_text("a,100,48\nb,1000,47\nc,10000,46\n")
+
+    with pytest.raises(CaptureError, match="no table of numbers was found"):
+        inspect_captures([file], told=Told(units={"frequency": "Hz", "gain": "dB"}))
+
+
+def test_preamble_as_wide_as_a_record_is_not_its_names(tmp_path: Path) -> None:
+    """The line right above the samples is."""
+    file = tmp_path / "capture.csv"
+    file.write_text("Operator,nobody,today\n" + plain(samples(1e3)))
+
+    (capture,) = inspect_captures([file])
+
+    assert capture.curve.gain[0] == pytest.approx(abs(board(1e3)), rel=1e-4)
